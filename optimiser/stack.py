@@ -1,0 +1,150 @@
+"""What is built: shims and stacks, as data. No files, no physics."""
+
+import re
+from collections.abc import Iterable
+from dataclasses import dataclass
+from itertools import groupby
+
+from optimiser.faults import BadInput
+
+_GROUP = re.compile(
+    r"^\s*(?P<quantity>\d+)\s*[x*×]\s*(?P<outer>[\d.]+)\s*[x*×]\s*(?P<thickness>[\d.]+)"
+    r"(?:\s*/\s*(?P<inner>[\d.]+))?\s*$",
+    re.IGNORECASE,
+)
+
+
+@dataclass(frozen=True, order=True)
+class Shim:
+    """One shim. ``inner_mm`` is given only for a ring shim, whose hole is wider than the clamp."""
+
+    outer_mm: float
+    thickness_mm: float
+    inner_mm: float | None = None
+
+    def __str__(self) -> str:
+        ring = f" / {self.inner_mm:g}" if self.inner_mm is not None else ""
+        return f"{self.outer_mm:g} x {self.thickness_mm:.2f}{ring}"
+
+
+@dataclass(frozen=True)
+class Group:
+    """Equal shims that lie on each other."""
+
+    quantity: int
+    shim: Shim
+
+    def __str__(self) -> str:
+        return f"{self.quantity} x {self.shim}"
+
+
+@dataclass(frozen=True)
+class Stack:
+    """Groups of shims, face first; the last group is the clamp shim.
+
+    The clamp shim does not bend: its outer diameter is where all the others are clamped.
+    """
+
+    groups: tuple[Group, ...]
+
+    def __post_init__(self) -> None:
+        faults = _faults_of(self.groups)
+        if faults:
+            raise BadInput(faults)
+
+    @classmethod
+    def of(cls, shims: Iterable[Shim]) -> "Stack":
+        """Build a stack from single shims, face first; equal neighbours become one group."""
+        runs = ((shim, sum(1 for _ in run)) for shim, run in groupby(shims))
+        return cls(tuple(Group(quantity, shim) for shim, quantity in runs))
+
+    @classmethod
+    def parse(cls, lines: Iterable[str]) -> "Stack":
+        """Read ``quantity x outer mm x thickness mm`` lines, face first.
+
+        A ring shim adds its hole: ``1 x 24 x 0.20 / 20``. Raises BadInput naming every bad line.
+        """
+        groups: list[Group] = []
+        faults: list[str] = []
+        for number, line in enumerate(lines, start=1):
+            try:
+                groups.append(parse_group(line))
+            except BadInput as error:
+                faults += [f"shim group {number}: {fault}" for fault in error.faults]
+        if faults:
+            raise BadInput(faults)
+        return cls(tuple(groups))
+
+    @property
+    def clamp_mm(self) -> float:
+        """Diameter at which the stack is clamped, mm."""
+        return self.groups[-1].shim.outer_mm
+
+    @property
+    def bending(self) -> tuple[Shim, ...]:
+        """Every shim that bends or lies loose, face first, one entry a piece (no clamp shim)."""
+        return tuple(g.shim for g in self.groups[:-1] for _ in range(g.quantity))
+
+    @property
+    def pieces(self) -> tuple[Shim, ...]:
+        """Every shim, face first, clamp shim last, one entry a piece."""
+        return tuple(g.shim for g in self.groups for _ in range(g.quantity))
+
+    @property
+    def parts(self) -> int:
+        """Number of shims, clamp shim included."""
+        return sum(g.quantity for g in self.groups)
+
+    @property
+    def height_mm(self) -> float:
+        """Height on the post, mm (ring shims lie around others and do not count)."""
+        return sum(g.quantity * g.shim.thickness_mm for g in self.groups if g.shim.inner_mm is None)
+
+    def lines(self) -> list[str]:
+        """The stack as text, face first, one line a group."""
+        return [str(g) for g in self.groups]
+
+
+def parse_group(text: str) -> Group:
+    """Read one ``quantity x outer mm x thickness mm`` text. Raises BadInput."""
+    match = _GROUP.match(text)
+    if not match:
+        raise BadInput(
+            f"'{text.strip()}' is not 'quantity x outer mm x thickness mm', e.g. 3 x 24 x 0.15"
+        )
+    inner = match["inner"]
+    try:
+        outer, thickness = float(match["outer"]), float(match["thickness"])
+        hole = float(inner) if inner else None
+    except ValueError:
+        raise BadInput(f"'{text.strip()}' holds a number that cannot be read") from None
+    return Group(int(match["quantity"]), Shim(outer, thickness, hole))
+
+
+def _faults_of(groups: tuple[Group, ...]) -> list[str]:
+    if len(groups) < 2:
+        return ["a stack needs at least a face shim and a clamp shim (the last, smallest one)"]
+    clamp = groups[-1].shim
+    faults = []
+    for number, group in enumerate(groups, start=1):
+        shim, where = group.shim, f"shim group {number} ({group})"
+        if group.quantity < 1:
+            faults.append(f"{where}: the quantity must be 1 or more")
+        if not 2.0 <= shim.outer_mm <= 200.0:
+            faults.append(f"{where}: the outer diameter must be 2 to 200 mm")
+        if not 0.02 <= shim.thickness_mm <= 5.0:
+            faults.append(f"{where}: the thickness must be 0.02 to 5 mm")
+        if shim.inner_mm is not None and not clamp.outer_mm < shim.inner_mm < shim.outer_mm:
+            faults.append(
+                f"{where}: a ring shim's hole must lie between the clamp diameter "
+                f"{clamp.outer_mm:g} mm and its own outer diameter"
+            )
+        if number < len(groups) and shim.outer_mm <= clamp.outer_mm:
+            faults.append(
+                f"{where}: must be wider than the clamp shim (last group, {clamp.outer_mm:g} mm)"
+            )
+    if clamp.inner_mm is not None:
+        faults.append("the last group is the clamp shim and cannot be a ring shim")
+    if groups[0].shim.inner_mm is not None:
+        faults.append("the first group is the face shim and cannot be a ring shim")
+    return faults
