@@ -173,7 +173,7 @@ def assemble(
     count = np.zeros(m, dtype=np.int64)
     start = np.zeros(m + 1, dtype=np.int64)
     for g in range(m):
-        if groups[g, 4] == 0.0:
+        if groups[g, 4] == 0.0 and groups[g, 0] > clamp * (1.0 + 1e-9):
             count[g] = nearest(radii, groups[g, 0]) + 1
         start[g + 1] = start[g] + count[g]
     rigidity = youngs / (12.0 * (1.0 - poisson * poisson))

@@ -79,6 +79,27 @@ def ring_moment(r: float, s: float, clamp: float, edge: float, poisson: float) -
     return total - (1.0 - poisson) * ring_slope(r, s, clamp, edge, poisson) / r
 
 
+@kernel
+def slope_load_slope(r: float, s: float, clamp: float, edge: float, poisson: float) -> float:
+    """Slope at r under a unit slope load at s: the derivative of :func:`ring_slope` by s (D = 1)."""
+    squared = clamp * clamp
+    whole = (1.0 + poisson) * edge * edge + (1.0 - poisson) * squared
+    inner = min(r, s)
+    turned = (1.0 - poisson) / whole * (r * r - squared) * (s * s - squared)
+    return (turned + inner * inner - squared) / (4.0 * pi * r * s)
+
+
+@kernel
+def slope_load_moment(r: float, s: float, clamp: float, edge: float, poisson: float) -> float:
+    """Radial moment at r under a unit slope load at s: derivative of :func:`ring_moment` by s."""
+    squared = clamp * clamp
+    whole = (1.0 + poisson) * edge * edge + (1.0 - poisson) * squared
+    total = (1.0 - poisson) * (s * s - squared) / (2.0 * pi * s * whole)
+    if r < s:
+        total += 1.0 / (2.0 * pi * s)
+    return total - (1.0 - poisson) * slope_load_slope(r, s, clamp, edge, poisson) / r
+
+
 _POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(16)
 
 
@@ -106,4 +127,23 @@ def pressure_response(
                 total += weight * ring_moment(r, s, clamp, edge, poisson)
             else:
                 total += weight * ring_deflection(r, s, clamp, edge, poisson)
+    return total
+
+
+@kernel
+def pressure_slope(
+    r: float, inner: float, outer: float, clamp: float, edge: float, poisson: float
+) -> float:
+    """Slope (D = 1) at r under unit pressure between two radii, integrated as above."""
+    total = 0.0
+    start = max(inner, clamp)
+    stop = min(outer, edge)
+    middle = min(max(r, start), stop)
+    for low, high in ((start, middle), (middle, stop)):
+        if high <= low:
+            continue
+        half = 0.5 * (high - low)
+        for k in range(_POINTS.size):
+            s = low + half * (1.0 + _POINTS[k])
+            total += _WEIGHTS[k] * half * 2.0 * pi * s * ring_slope(r, s, clamp, edge, poisson)
     return total
