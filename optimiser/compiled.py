@@ -16,3 +16,4 @@ def kernel(function: Callable[P, R]) -> Callable[P, R]:
     """
     compiled: Callable[P, R] = numba.njit(cache=True, fastmath=False, nogil=True)(function)
     return compiled
+

@@ -31,6 +31,8 @@ from optimiser.mechanics.tables import POINTS, Tables
 RELAXATION = 1.6
 MOST_ROUNDS = 60
 MOST_PIVOTS = 80
+#: Relative overlap or pull that passes for none.
+SLACK = 1e-9
 RING, SPACER = -1, -2
 
 
@@ -80,7 +82,7 @@ class Bench(NamedTuple):
     """Scratch arrays for stacks of up to m groups on n nodes, one a thread."""
 
     used: Ints  # (n,) table nodes that matter for this stack
-    size: Ints  # (3,) number of used nodes, contacts, closed contacts
+    size: Ints  # (4,) number of used nodes, contacts, closed contacts; pivots in all
     reach: Ints  # (m,) number of used nodes on each group
     front: Ints  # (c,) group in front of each contact; -1 for none
     back: Ints  # (c,) group behind it; -1 for none
@@ -90,6 +92,10 @@ class Bench(NamedTuple):
     closed: Ints  # (c,) 1 closed, 0 open, 2 always closed
     force: Floats  # (c,)
     active: Ints  # (c,)
+    wrong: Ints  # (c,)
+    low: Ints  # (c,) first column of each row of the matrix
+    last_front: Ints  # (n,) rearmost group so far at each used node
+    passed: Floats  # (n,) gap since that group
     matrix: Floats  # (c, c)
     vector: Floats  # (c,)
     rigidity: Floats  # (m,)
@@ -99,6 +105,7 @@ class Bench(NamedTuple):
     lift: Floats  # (m, n)
     theta: Floats  # (m, q)
     load: Floats  # (m, q) slope loads
+    bent: Floats  # (m, n) moments
     last_lift: Floats  # (3, m, n) at the last pressures
     last_theta: Floats  # (3, m, q)
 
@@ -108,13 +115,14 @@ def bench(groups: int, nodes: int) -> Bench:
     """Scratch arrays, made once."""
     contacts = groups * nodes + 2
     return Bench(
-        np.zeros(nodes, np.int64), np.zeros(3, np.int64), np.zeros(groups, np.int64),
+        np.zeros(nodes, np.int64), np.zeros(4, np.int64), np.zeros(groups, np.int64),
         np.zeros(contacts, np.int64), np.zeros(contacts, np.int64),
         np.zeros(contacts, np.int64), np.zeros(contacts), np.zeros(contacts),
         np.zeros(contacts, np.int64), np.zeros(contacts), np.zeros(contacts, np.int64),
-        np.zeros((contacts, contacts)), np.zeros(contacts), np.zeros(groups), np.zeros(groups),
+        np.zeros(contacts, np.int64), np.zeros(contacts, np.int64), np.zeros(nodes, np.int64),
+        np.zeros(nodes), np.zeros((contacts, contacts)), np.zeros(contacts), np.zeros(groups), np.zeros(groups),
         np.zeros((groups, nodes)), np.zeros((groups, POINTS)), np.zeros((groups, nodes)),
-        np.zeros((groups, POINTS)), np.zeros((groups, POINTS)),
+        np.zeros((groups, POINTS)), np.zeros((groups, POINTS)), np.zeros((groups, nodes + 1)),
         np.zeros((3, groups, nodes)), np.zeros((3, groups, POINTS)),
     )  # fmt: skip
 
@@ -159,236 +167,277 @@ def _add_contact(b: Bench, front: int, back: int, at: int, gap: float, closed: i
 
 
 @kernel
-def _touch_at(tables: Tables, layers: Layers, b: Bench, u: int) -> int:
-    """Contacts between groups at one used node; returns the rearmost group that reaches it."""
-    k = b.used[u]
-    front = -1
-    gap = 0.0
-    for g in range(layers.plate.size):
-        plate = layers.plate[g]
-        if plate == RING:
-            if layers.hole[g] <= k <= layers.rim[g]:
-                gap -= layers.thick[g]
-        elif plate >= 0 and tables.edge_node[plate] >= k:
-            if front >= 0:
-                edge = min(tables.edge_node[plate], tables.edge_node[layers.plate[front]])
-                _add_contact(b, front, g, u, gap, 1 if (gap < 0.0 or edge == k) else 0)
-                if gap > 0.0:
-                    b.closed[b.size[1] - 1] = 0
-            front = g
-            gap = 0.0
-        else:
-            gap += layers.thick[g]
-    return front
+def _touch(tables: Tables, layers: Layers, b: Bench) -> None:
+    """Contacts between groups at the used nodes, interface after interface."""
+    plates, edge_node, used = layers.plate, tables.edge_node, b.used
+    front, gap = b.last_front, b.passed
+    for u in range(b.size[0]):
+        front[u] = -1
+        gap[u] = 0.0
+    for g in range(plates.size):
+        plate = plates[g]
+        for u in range(b.size[0]):
+            k = used[u]
+            if plate == RING:
+                if layers.hole[g] <= k <= layers.rim[g]:
+                    gap[u] -= layers.thick[g]
+            elif plate >= 0 and edge_node[plate] >= k:
+                if front[u] >= 0:
+                    edge = min(edge_node[plate], edge_node[plates[front[u]]])
+                    near = gap[u] < 0.0 or (gap[u] == 0.0 and edge == k)
+                    _add_contact(b, front[u], g, u, gap[u], 1 if near else 0)
+                front[u] = g
+                gap[u] = 0.0
+            else:
+                gap[u] += layers.thick[g]
 
 
 @kernel
 def _lay_out(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
     """Find this stack's nodes and contacts, and set its stiffnesses."""
-    b.size[0] = _choose_nodes(tables, layers, b)
-    b.size[1] = 0
+    size, used, reach = b.size, b.used, b.reach
+    rigidity, soft, lift, theta = b.rigidity, b.soft, b.lift, b.theta
+    size[0] = _choose_nodes(tables, layers, b)
+    size[1] = 0
     bend = setting.youngs / (12.0 * (1.0 - tables.poisson * tables.poisson))
     for g in range(layers.plate.size):
-        b.reach[g] = 0
+        reach[g] = 0
         if layers.plate[g] >= 0:
-            b.rigidity[g] = bend * layers.cubed[g]
-            b.soft[g] = 1.0 / b.rigidity[g]
-            for u in range(b.size[0]):
-                if b.used[u] <= tables.edge_node[layers.plate[g]]:
-                    b.reach[g] = u + 1
-        for u in range(b.size[0]):
-            b.lift[g, u] = 0.0
+            rigidity[g] = bend * layers.cubed[g]
+            soft[g] = 1.0 / rigidity[g]
+            for u in range(size[0]):
+                if used[u] <= tables.edge_node[layers.plate[g]]:
+                    reach[g] = u + 1
+        for u in range(size[0]):
+            lift[g, u] = 0.0
         for q in range(POINTS):
-            b.theta[g, q] = 0.0
-    for u in range(b.size[0]):
-        rear = _touch_at(tables, layers, b, u)
-        if b.used[u] == tables.seat and setting.seated:
-            _add_contact(b, -1, 0, u, -setting.seat_height, 1)
-        if b.used[u] == tables.spring and rear >= 0 and setting.spring_rate > 0.0:
-            _add_contact(b, rear, -1, u, -setting.spring_preload / setting.spring_rate, 2)
-            b.flex[b.size[1] - 1] = 1.0 / setting.spring_rate
+            theta[g, q] = 0.0
+    if setting.seated:
+        for u in range(size[0]):
+            if used[u] == tables.seat:
+                _add_contact(b, -1, 0, u, -setting.seat_height, 1)
+    _touch(tables, layers, b)
+    if setting.spring_rate > 0.0:
+        for u in range(size[0]):
+            if used[u] == tables.spring and b.last_front[u] >= 0:
+                gap = -setting.spring_preload / setting.spring_rate
+                _add_contact(b, b.last_front[u], -1, u, gap, 2)
+                b.flex[size[1] - 1] = 1.0 / setting.spring_rate
 
 
 @kernel
 def _stretch_loads(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
     """Membrane forces of the last shapes as slope loads, and the added stiffness."""
-    for g in range(layers.plate.size):
-        plate = layers.plate[g]
+    membrane, weight, stiffening = tables.membrane, tables.weight, tables.stiffening
+    plates, thick, reach = layers.plate, layers.thick, b.reach
+    lift, theta, load, soft, rigidity = b.lift, b.theta, b.load, b.soft, b.rigidity
+    for g in range(plates.size):
+        plate = plates[g]
         if plate < 0:
             continue
-        stretching = setting.youngs * layers.thick[g]
-        tip = b.lift[g, b.reach[g] - 1]
-        added = RELAXATION * tables.stiffening[plate] * stretching / b.rigidity[g] * tip * tip
-        b.soft[g] = 1.0 / (b.rigidity[g] * (1.0 + added))
+        stretching = setting.youngs * thick[g]
+        tip = lift[g, reach[g] - 1]
+        added = RELAXATION * stiffening[plate] * stretching / rigidity[g] * tip * tip
+        soft[g] = 1.0 / (rigidity[g] * (1.0 + added))
         for q in range(POINTS):
             total = 0.0
             for k in range(POINTS):
-                total += tables.membrane[plate, q, k] * b.theta[g, k] * b.theta[g, k]
-            b.load[g, q] = (
-                pi * stretching * tables.weight[plate, q] * total * b.theta[g, q]
-            )
+                total += membrane[plate, q, k] * theta[g, k] * theta[g, k]
+            load[g, q] = pi * stretching * weight[plate, q] * total * theta[g, q]
 
 
 @kernel
 def _without_contact(tables: Tables, layers: Layers, pressure: float, b: Bench) -> None:
     """Deflections and slopes under pressure and slope loads alone."""
-    for g in range(layers.plate.size):
-        plate = layers.plate[g]
+    pressed, pressed_slope = tables.pressed, tables.pressed_slope
+    slope, slope_load = tables.slope, tables.slope_load
+    plates, used, reach = layers.plate, b.used, b.reach
+    lift, theta, load = b.lift, b.theta, b.load
+    free, free_slope, softness, rigidity = b.free, b.free_slope, b.soft, b.rigidity
+    for g in range(plates.size):
+        plate = plates[g]
         if plate < 0:
             continue
-        soft = b.soft[g]
-        kept = 1.0 - soft * b.rigidity[g]
-        pressed = pressure if g == 0 else 0.0
-        for u in range(b.reach[g]):
-            k = b.used[u]
-            total = pressed * tables.pressed[plate, k]
+        soft = softness[g]
+        kept = 1.0 - soft * rigidity[g]
+        push = pressure if g == 0 else 0.0
+        for u in range(reach[g]):
+            k = used[u]
+            total = push * pressed[plate, k]
             for q in range(POINTS):
-                total -= tables.slope[plate, k, q] * b.load[g, q]
-            b.free[g, u] = soft * total + kept * b.lift[g, u]
+                total -= slope[plate, k, q] * load[g, q]
+            free[g, u] = soft * total + kept * lift[g, u]
         for q in range(POINTS):
-            total = pressed * tables.pressed_slope[plate, q]
+            total = push * pressed_slope[plate, q]
             for j in range(POINTS):
-                total -= tables.slope_load[plate, q, j] * b.load[g, j]
-            b.free_slope[g, q] = soft * total + kept * b.theta[g, q]
+                total -= slope_load[plate, q, j] * load[g, j]
+            free_slope[g, q] = soft * total + kept * theta[g, q]
 
 
 @kernel
-def _couple(tables: Tables, layers: Layers, b: Bench, c: int, d: int) -> float:
-    """Clearance opened at contact c by 1 N in contact d."""
-    i, j = b.used[b.at[c]], b.used[b.at[d]]
-    value = b.flex[c] if c == d else 0.0
-    front, back = b.front[c], b.back[c]
-    if front >= 0:
-        g = b.soft[front] * tables.deflection[layers.plate[front], i, j]
-        if b.front[d] == front:
-            value += g
-        elif b.back[d] == front:
-            value -= g
-    if back >= 0:
-        g = b.soft[back] * tables.deflection[layers.plate[back], i, j]
-        if b.back[d] == back:
-            value += g
-        elif b.front[d] == back:
-            value -= g
-    return value
-
-
-@kernel
-def _open_clearance(b: Bench, c: int, lift: Floats) -> float:
-    value = b.gap[c]
-    if b.back[c] >= 0:
-        value += lift[b.back[c], b.at[c]]
-    if b.front[c] >= 0:
-        value -= lift[b.front[c], b.at[c]]
-    return value
-
-
-@kernel
-def _solve_closed(tables: Tables, layers: Layers, b: Bench) -> bool:
-    """Forces of the closed contacts so that their clearance is zero (Cholesky)."""
+def _gather(tables: Tables, layers: Layers, b: Bench) -> int:
+    """The closed contacts' compliance (lower half) and clearance without them; their number."""
+    deflection, plates = tables.deflection, layers.plate
+    fronts, backs, at, used = b.front, b.back, b.at, b.used
+    closed, active, soft, free = b.closed, b.active, b.soft, b.free
+    matrix, vector, gap, flex, low = b.matrix, b.vector, b.gap, b.flex, b.low
     n = 0
     for c in range(b.size[1]):
-        b.force[c] = 0.0
-        if b.closed[c]:
-            b.active[n] = c
-            n += 1
-    a, v = b.matrix, b.vector
+        if not closed[c]:
+            continue
+        front, back, node = fronts[c], backs[c], used[at[c]]
+        clear = gap[c]
+        if back >= 0:
+            clear += free[back, at[c]]
+        if front >= 0:
+            clear -= free[front, at[c]]
+        vector[n] = -clear
+        active[n] = c
+        start = 0
+        while start < n and backs[active[start]] < front:
+            start += 1
+        low[n] = start
+        for i in range(start, n + 1):
+            d = active[i]
+            other = used[at[d]]
+            value = 0.0
+            if front >= 0:
+                sign = 1.0 if fronts[d] == front else (-1.0 if backs[d] == front else 0.0)
+                if sign != 0.0:
+                    value += sign * soft[front] * deflection[plates[front], node, other]
+            if back >= 0:
+                sign = 1.0 if backs[d] == back else (-1.0 if fronts[d] == back else 0.0)
+                if sign != 0.0:
+                    value += sign * soft[back] * deflection[plates[back], node, other]
+            matrix[n, i] = value
+        matrix[n, n] += flex[c]
+        n += 1
+    return n
+
+
+@kernel
+def _solve(matrix: Floats, low: Ints, vector: Floats, n: int) -> bool:
+    """Cholesky solve with the lower half of ``matrix`` (n, n) from column ``low`` (n,) of each row on;
+    ``vector`` (n,) becomes the solution."""
     for i in range(n):
-        c = b.active[i]
-        v[i] = -_open_clearance(b, c, b.free)
-        for j in range(i + 1):
-            total = _couple(tables, layers, b, c, b.active[j])
-            for k in range(j):
-                total -= a[i, k] * a[j, k]
+        for j in range(low[i], i + 1):
+            total = matrix[i, j]
+            for k in range(max(low[i], low[j]), j):
+                total -= matrix[i, k] * matrix[j, k]
             if i > j:
-                a[i, j] = total / a[j, j]
+                matrix[i, j] = total / matrix[j, j]
             elif total > 0.0:
-                a[i, i] = np.sqrt(total)
+                matrix[i, i] = np.sqrt(total)
             else:
                 return False
-        for k in range(i):
-            v[i] -= a[i, k] * v[k]
-        v[i] /= a[i, i]
+        total = vector[i]
+        for k in range(low[i], i):
+            total -= matrix[i, k] * vector[k]
+        vector[i] = total / matrix[i, i]
     for i in range(n - 1, -1, -1):
-        for k in range(i + 1, n):
-            v[i] -= a[k, i] * v[k]
-        v[i] /= a[i, i]
-        b.force[b.active[i]] = v[i]
-    b.size[2] = n
+        vector[i] /= matrix[i, i]
+        for k in range(low[i], i):
+            vector[k] -= matrix[i, k] * vector[i]
     return True
 
 
 @kernel
 def _spread(tables: Tables, layers: Layers, b: Bench) -> None:
-    """Deflections and slopes with the contact forces."""
-    for g in range(layers.plate.size):
-        for u in range(b.reach[g]):
-            b.lift[g, u] = b.free[g, u]
+    """Deflections with the contact forces."""
+    deflection, plates, used, reach = tables.deflection, layers.plate, b.used, b.reach
+    fronts, backs, at, active, vector = b.front, b.back, b.at, b.active, b.vector
+    lift, free, soft = b.lift, b.free, b.soft
+    for g in range(plates.size):
+        for u in range(reach[g]):
+            lift[g, u] = free[g, u]
     for i in range(b.size[2]):
-        c = b.active[i]
-        node = b.used[b.at[c]]
+        c = active[i]
+        node = used[at[c]]
         for side in range(2):
-            g = b.back[c] if side else b.front[c]
+            g = backs[c] if side else fronts[c]
             if g < 0:
                 continue
-            push = b.force[c] * b.soft[g] * (1.0 if side else -1.0)
-            row = tables.deflection[layers.plate[g], node]
-            for u in range(b.reach[g]):
-                b.lift[g, u] += push * row[b.used[u]]
+            plate = plates[g]
+            push = vector[i] * soft[g] * (1.0 if side else -1.0)
+            for u in range(reach[g]):
+                lift[g, u] += push * deflection[plate, node, used[u]]
 
 
 @kernel
 def _turn(tables: Tables, layers: Layers, b: Bench) -> None:
     """Slopes with the contact forces."""
-    for g in range(layers.plate.size):
-        b.theta[g] = b.free_slope[g]
+    slope, plates, used, at = tables.slope, layers.plate, b.used, b.at
+    fronts, backs, active, vector = b.front, b.back, b.active, b.vector
+    theta, free_slope, soft = b.theta, b.free_slope, b.soft
+    for g in range(plates.size):
+        for q in range(POINTS):
+            theta[g, q] = free_slope[g, q]
     for i in range(b.size[2]):
-        c = b.active[i]
-        node = b.used[b.at[c]]
+        c = active[i]
+        node = used[at[c]]
         for side in range(2):
-            g = b.back[c] if side else b.front[c]
+            g = backs[c] if side else fronts[c]
             if g < 0:
                 continue
-            push = b.force[c] * b.soft[g] * (1.0 if side else -1.0)
+            push = vector[i] * soft[g] * (1.0 if side else -1.0)
             for q in range(POINTS):
-                b.theta[g, q] += push * tables.slope[layers.plate[g], node, q]
+                theta[g, q] += push * slope[plates[g], node, q]
+
+
+@kernel
+def _mistaken(b: Bench, scale: float) -> int:
+    """List the contacts that pull though closed, or overlap though open; their number."""
+    closed, force, gap, at, lift = b.closed, b.force, b.gap, b.at, b.lift
+    fronts, backs, active, vector, wrong = b.front, b.back, b.active, b.vector, b.wrong
+    largest = 0.0
+    for i in range(b.size[2]):
+        largest = max(largest, abs(vector[i]))
+    for c in range(b.size[1]):
+        force[c] = 0.0
+    for i in range(b.size[2]):
+        force[active[i]] = vector[i]
+    count = 0
+    for c in range(b.size[1]):
+        if closed[c] == 1:
+            bad = force[c] < -SLACK * largest
+        elif closed[c] == 0:
+            clear = gap[c]
+            if backs[c] >= 0:
+                clear += lift[backs[c], at[c]]
+            if fronts[c] >= 0:
+                clear -= lift[fronts[c], at[c]]
+            bad = clear < -SLACK * scale
+        else:
+            bad = False
+        if bad:
+            wrong[count] = c
+            count += 1
+    return count
 
 
 @kernel
 def _find_contacts(tables: Tables, layers: Layers, b: Bench, scale: float) -> bool:
     """Principal pivoting from the contacts that were closed last. False when it did not end."""
-    best = b.size[1] + 1
+    size, closed, wrong = b.size, b.closed, b.wrong
+    best = size[1] + 1
     patience = 3
-    length = 1e-10 * scale
     for _pivot in range(MOST_PIVOTS):
-        if not _solve_closed(tables, layers, b):
+        size[2] = _gather(tables, layers, b)
+        if not _solve(b.matrix, b.low, b.vector, size[2]):
             return False
+        size[3] += 1
         _spread(tables, layers, b)
-        total = 0.0
-        for c in range(b.size[1]):
-            total = max(total, abs(b.force[c]))
-        wrong = 0
-        last = -1
-        for c in range(b.size[1]):
-            if (b.closed[c] == 1 and b.force[c] < -1e-10 * total) or (
-                b.closed[c] == 0 and _open_clearance(b, c, b.lift) < -length
-            ):
-                b.active[b.size[2] + wrong] = c
-                wrong += 1
-                last = c
-        if wrong == 0:
+        count = _mistaken(b, scale)
+        if count == 0:
             return True
-        if wrong < best:
-            best = wrong
+        if count < best:
+            best = count
             patience = 3
         else:
             patience -= 1
-        if patience >= 0:
-            for i in range(wrong):
-                c = b.active[b.size[2] + i]
-                b.closed[c] = 1 - b.closed[c]
-        else:
-            b.closed[last] = 1 - b.closed[last]
+        first = 0 if patience >= 0 else count - 1
+        for i in range(first, count):
+            closed[wrong[i]] = 1 - closed[wrong[i]]
     return False
 
 
@@ -431,15 +480,17 @@ def _moment(
 ) -> float:
     """Radial moment, N, of a settled group at the clamp (row 0) or at table node row - 1."""
     plate = layers.plate[g]
+    moment, turned, load = tables.moment, tables.slope_load_moment, b.load
+    fronts, backs, active, force, at, used = b.front, b.back, b.active, b.force, b.at, b.used
     total = pressure * tables.pressed_moment[plate, row] if g == 0 else 0.0
     for q in range(POINTS):
-        total -= tables.slope_load_moment[plate, row, q] * b.load[g, q]
+        total -= turned[plate, row, q] * load[g, q]
     for k in range(b.size[2]):
-        c = b.active[k]
-        if b.front[c] == g:
-            total -= b.force[c] * tables.moment[plate, row, b.used[b.at[c]]]
-        elif b.back[c] == g:
-            total += b.force[c] * tables.moment[plate, row, b.used[b.at[c]]]
+        c = active[k]
+        if fronts[c] == g:
+            total -= force[c] * moment[plate, row, used[at[c]]]
+        elif backs[c] == g:
+            total += force[c] * moment[plate, row, used[at[c]]]
     return total
 
 
@@ -447,9 +498,10 @@ def _moment(
 def _pull(tables: Tables, layers: Layers, setting: Setting, b: Bench, g: int, row: int) -> float:
     """Radial membrane force per length, N/m, at the same places."""
     plate = layers.plate[g]
+    membrane, theta = tables.membrane_edge, b.theta
     total = 0.0
     for q in range(POINTS):
-        total += tables.membrane_edge[plate, row, q] * b.theta[g, q] * b.theta[g, q]
+        total += membrane[plate, row, q] * theta[g, q] * theta[g, q]
     r = tables.clamp if row == 0 else tables.nodes[row - 1]
     return 0.5 * setting.youngs * layers.thick[g] * total / r
 
@@ -459,15 +511,38 @@ def _peak_stress(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float
 ) -> float:
     """Largest membrane + bending stress in any shim, Pa, as settled."""
+    plates, thick, cubed, thickest = layers.plate, layers.thick, layers.cubed, layers.thickest
+    pressed, moment, turned = tables.pressed_moment, tables.moment, tables.slope_load_moment
+    membrane, nodes, theta, load = tables.membrane_edge, tables.nodes, b.theta, b.load
+    fronts, backs, active, vector = b.front, b.back, b.active, b.vector
+    reach, used, at, bent = b.reach, b.used, b.at, b.bent
+    for g in range(plates.size):
+        for i in range(reach[g]):
+            row = 0 if i == 0 else used[i - 1] + 1
+            total = pressure * pressed[plates[g], row] if g == 0 else 0.0
+            for q in range(POINTS):
+                total -= turned[plates[g], row, q] * load[g, q]
+            bent[g, i] = total
+    for k in range(b.size[2]):
+        c = active[k]
+        node = used[at[c]]
+        for side in range(2):
+            g = backs[c] if side else fronts[c]
+            if g < 0:
+                continue
+            push = vector[k] if side else -vector[k]
+            for i in range(reach[g]):
+                row = 0 if i == 0 else used[i - 1] + 1
+                bent[g, i] += push * moment[plates[g], row, node]
     peak = 0.0
-    for g in range(layers.plate.size):
-        if layers.plate[g] < 0:
-            continue
-        for i in range(b.reach[g]):
-            row = 0 if i == 0 else b.used[i - 1] + 1
-            bent = abs(_moment(tables, layers, b, pressure, g, row))
-            value = _pull(tables, layers, setting, b, g, row) / layers.thick[g]
-            peak = max(peak, value + 6.0 * bent * layers.thickest[g] / layers.cubed[g])
+    for g in range(plates.size):
+        for i in range(reach[g]):
+            row = 0 if i == 0 else used[i - 1] + 1
+            pull = 0.0
+            for q in range(POINTS):
+                pull += membrane[plates[g], row, q] * theta[g, q] * theta[g, q]
+            pull *= 0.5 * setting.youngs / (tables.clamp if i == 0 else nodes[row - 1])
+            peak = max(peak, pull + 6.0 * abs(bent[g, i]) * thickest[g] / cubed[g])
     return peak
 
 
