@@ -14,6 +14,10 @@ _GROUP = re.compile(
 )
 
 
+#: More pieces of one size than any post carries: a slip of the pen.
+MOST_OF_A_SIZE = 60
+
+
 @dataclass(frozen=True, order=True)
 class Shim:
     """One shim. ``inner_mm`` is given only for a ring shim, whose hole is wider than the clamp."""
@@ -24,7 +28,7 @@ class Shim:
 
     def __str__(self) -> str:
         ring = f" / {self.inner_mm:g}" if self.inner_mm is not None else ""
-        return f"{self.outer_mm:g} x {self.thickness_mm:.2f}{ring}"
+        return f"{self.outer_mm:g} x {_thickness_text(self.thickness_mm)}{ring}"
 
 
 @dataclass(frozen=True)
@@ -109,8 +113,10 @@ def parse_group(text: str) -> Group:
     """Read one ``quantity x outer mm x thickness mm`` text. Raises BadInput."""
     match = _GROUP.match(text)
     if not match:
+        hint = " (with a point as the decimal mark)" if "," in text else ""
         raise BadInput(
-            f"'{text.strip()}' is not 'quantity x outer mm x thickness mm', e.g. 3 x 24 x 0.15"
+            f"'{text.strip()}' is not 'quantity x outer mm x thickness mm'{hint}, "
+            "e.g. 3 x 24 x 0.15"
         )
     inner = match["inner"]
     try:
@@ -121,30 +127,63 @@ def parse_group(text: str) -> Group:
     return Group(int(match["quantity"]), Shim(outer, thickness, hole))
 
 
+def _thickness_text(thickness_mm: float) -> str:
+    """Two decimals as shims are sold; more only where a measured thickness has them."""
+    short = f"{thickness_mm:.2f}"
+    return short if abs(float(short) - thickness_mm) < 1e-9 else f"{thickness_mm:.6g}"
+
+
 def _faults_of(groups: tuple[Group, ...]) -> list[str]:
     if len(groups) < 2:
         return ["a stack needs at least a face shim and a clamp shim (the last, smallest one)"]
-    clamp = groups[-1].shim
     faults = []
     for number, group in enumerate(groups, start=1):
-        shim, where = group.shim, f"shim group {number} ({group})"
-        if group.quantity < 1:
-            faults.append(f"{where}: the quantity must be 1 or more")
-        if not 2.0 <= shim.outer_mm <= 200.0:
-            faults.append(f"{where}: the outer diameter must be 2 to 200 mm")
-        if not 0.02 <= shim.thickness_mm <= 5.0:
-            faults.append(f"{where}: the thickness must be 0.02 to 5 mm")
-        if shim.inner_mm is not None and not clamp.outer_mm < shim.inner_mm < shim.outer_mm:
-            faults.append(
-                f"{where}: a ring shim's hole must lie between the clamp diameter "
-                f"{clamp.outer_mm:g} mm and its own outer diameter"
-            )
-        if number < len(groups) and shim.outer_mm <= clamp.outer_mm:
-            faults.append(
-                f"{where}: must be wider than the clamp shim (last group, {clamp.outer_mm:g} mm)"
-            )
-    if clamp.inner_mm is not None:
-        faults.append("the last group is the clamp shim and cannot be a ring shim")
-    if groups[0].shim.inner_mm is not None:
-        faults.append("the first group is the face shim and cannot be a ring shim")
+        where = f"shim group {number} ({group})"
+        faults += [f"{where}: {fault}" for fault in _size_faults(group)]
+        faults += [f"{where}: {fault}" for fault in _place_faults(groups, number - 1)]
     return faults
+
+
+def _size_faults(group: Group) -> list[str]:
+    shim = group.shim
+    faults = []
+    if not 1 <= group.quantity <= MOST_OF_A_SIZE:
+        faults.append(f"the quantity must be 1 to {MOST_OF_A_SIZE}")
+    if not 2.0 <= shim.outer_mm <= 200.0:
+        faults.append("the outer diameter must be 2 to 200 mm")
+    if not 0.02 <= shim.thickness_mm <= 5.0:
+        faults.append("the thickness must be 0.02 to 5 mm")
+    return faults
+
+
+def _place_faults(groups: tuple[Group, ...], place: int) -> list[str]:
+    shim, clamp = groups[place].shim, groups[-1].shim
+    if place == len(groups) - 1:
+        ring = shim.inner_mm is not None
+        return ["the last group is the clamp shim and cannot be a ring shim"] if ring else []
+    faults = []
+    if not shim.outer_mm > clamp.outer_mm:
+        faults.append(f"must be wider than the clamp shim (last group, {clamp.outer_mm:g} mm)")
+    if shim.inner_mm is None:
+        return faults
+    if place == 0:
+        faults.append("the first group is the face shim and cannot be a ring shim")
+    if not clamp.outer_mm < shim.inner_mm < shim.outer_mm:
+        faults.append(
+            "a ring shim's hole must lie between the clamp diameter "
+            f"{clamp.outer_mm:g} mm and its own outer diameter"
+        )
+    elif place and not _is_held(groups, place):
+        faults.append(
+            f"a ring shim must lie between shims wider than its hole ({shim.inner_mm:g} mm), "
+            "one in front and one behind"
+        )
+    return faults
+
+
+def _is_held(groups: tuple[Group, ...], place: int) -> bool:
+    """True when the plain shims next in front of and behind a ring shim reach over its hole."""
+    hole = groups[place].shim.inner_mm or 0.0
+    front = [g.shim.outer_mm for g in groups[:place] if g.shim.inner_mm is None]
+    behind = [g.shim.outer_mm for g in groups[place + 1 :] if g.shim.inner_mm is None]
+    return bool(front and behind) and front[-1] > hole and behind[0] > hole

@@ -1,0 +1,1 @@
+"""Looking for stacks: encoding, operators, engine and ranking. No physics, no files."""
