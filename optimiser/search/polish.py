@@ -31,6 +31,7 @@ class Effort:
     double_tries: int = 400
     double_rounds: int = 6
     keen: float = 3.0
+    runners_up: int = 100
 
 
 class Polish:
@@ -51,6 +52,7 @@ class Polish:
         self._front = np.zeros(0, dtype=np.int64)
         self._seen = 0
         self._any_within = False
+        self._ran = 0
 
     def run(self) -> None:
         """Improve until nothing helps, the evaluations are spent or the user stops."""
@@ -96,12 +98,14 @@ class Polish:
         self._crown(self._by_family, new, self._family(new))
 
     def _family(self, rows: Ints) -> Ints:
-        """(rows,) number of the family: face diameter, clamp diameter and stage count."""
+        """(rows,) number of the family: diameters of face, clamp and crossover (if any)."""
         counts = self.archive.space.decode(self.archive.plans[rows])
         space = self.archive.space
         diameters = len(space.outer_of)
         face = space.widest(counts.pieces[:, 0])
-        return (face * diameters + space.diameter[counts.clamp]) * 2 + counts.two_stage
+        crossover = np.where(counts.two_stage, space.diameter[counts.crossover], diameters)
+        clamp = space.diameter[counts.clamp]
+        return np.asarray((face * diameters + clamp) * (diameters + 1) + crossover)
 
     def _crown(self, champions: dict[int, int], rows: Ints, kinds: Ints) -> None:
         """Note the rows that are better in error than the champion of their kind."""
@@ -127,7 +131,22 @@ class Polish:
             return int(lonely[0]), False
         everyone = [*by_parts, *by_family, *self._keen(dict(enumerate(self._front.tolist())))]
         tired = self._least_tried(everyone, self.effort.double_rounds)
-        return None if tired is None else (tired, True)
+        if tired is not None:
+            return tired, True
+        runner_up = self._runner_up()
+        return None if runner_up is None else (runner_up, False)
+
+    def _runner_up(self) -> int | None:
+        """The lowest error whose neighbourhood is unknown, among a bounded number."""
+        errors = self.archive.objectives[:, 0]
+        count = min(self.effort.runners_up + len(self._explored), len(errors) - 1)
+        best = np.argpartition(errors, count)[: count + 1]
+        explored = np.fromiter(self._explored, np.int64, len(self._explored))
+        left = np.setdiff1d(best, explored)
+        if len(left) == 0 or self._ran >= self.effort.runners_up:
+            return None
+        self._ran += 1
+        return int(left[np.lexsort((left, errors[left]))[0]])
 
     def _keen(self, champions: dict[int, int]) -> list[int]:
         """Champions not much worse than the best of them, best first."""
