@@ -4,7 +4,7 @@ The energy
 
     bending + membrane (von Karman) - pressure work + spring + contact
 
-is minimised by Newton's method with a line search. A contact that overlaps pushes back like a
+is minimised by Newton's method, with a line search when it takes long. A contact that overlaps pushes back like a
 spring ten thousand times stiffer than the plates there (assembly.CONTACT_STIFFNESS): overlaps stay
 far below what matters, and closing a gap is continuous.
 """
@@ -20,10 +20,10 @@ from optimiser.mechanics.membrane import inner_factor, outer_factor, stress_func
 from optimiser.mechanics.plate import pressure_response, ring_moment
 from optimiser.mechanics.plates import back_substitute, factor
 
-RELATIVE_TOLERANCE = 1e-9
+RELATIVE_TOLERANCE = 1e-8
 MOST_STEPS = 100
 #: First Newton steps are taken whole: the set of closed contacts settles faster than along a descent.
-FULL_STEPS = 15
+FULL_STEPS = 20
 #: At rest every shim lies on the next one: gaps below this share of the span start as closed.
 TOUCHING = 1e-9
 
@@ -183,10 +183,35 @@ def evaluate(
 
 
 @kernel
+def _shorten(
+    model: Model, shape: Floats, work: Work, pressure: float, stretched: bool, before: Floats,
+    direction: Floats, slope: float,
+) -> None:  # fmt: skip
+    """Shorten a step that went past the lowest energy on its line, by bisection on the derivative.
+
+    ``slope`` is the derivative's size at the start; the energy is convex there.
+    """
+    low, high = 0.0, 1.0
+    length = 1.0
+    for _bisection in range(40):
+        ahead = np.dot(work.gradient, direction)
+        if abs(ahead) <= 0.1 * slope or ahead > 0.0 and length == 1.0:
+            return
+        if ahead > 0.0:
+            low = length
+        else:
+            high = length
+        length = 0.5 * (low + high)
+        shape[:] = before - length * direction
+        evaluate(model, shape, work, pressure, stretched, 0.0)
+
+
+@kernel
 def _descend(
-    model: Model, shape: Floats, work: Work, pressure: float, stretched: bool, at_rest: bool
-) -> int:
-    """Newton's method with a halving line search from ``shape`` (s,), in place.
+    model: Model, shape: Floats, work: Work, pressure: float, stretched: bool, at_rest: bool,
+    whole: int,
+) -> int:  # fmt: skip
+    """Newton's method from ``shape`` (s,), in place, with a line search after ``whole`` steps.
 
     Returns the number of steps, or -1 where no equilibrium was found.
     """
@@ -194,7 +219,7 @@ def _descend(
     size = shape.size
     direction = np.empty(size)
     before = np.empty(size)
-    energy = evaluate(model, shape, work, pressure, stretched, TOUCHING * span * at_rest)
+    evaluate(model, shape, work, pressure, stretched, TOUCHING * span * at_rest)
     for step in range(1, MOST_STEPS + 1):
         direction[:] = work.gradient
         if not factor(work.hessian, work.reach, size):
@@ -202,15 +227,12 @@ def _descend(
         back_substitute(work.hessian, work.reach, size, direction)
         slope = np.dot(work.gradient, direction)
         before[:] = shape
-        length = 1.0
-        for _halving in range(30):
-            shape[:] = before - length * direction
-            value = evaluate(model, shape, work, pressure, stretched, 0.0)
-            if step <= FULL_STEPS or value <= energy - 1e-4 * length * slope + 1e-12 * abs(energy):
-                break
-            length *= 0.5
-        energy = value
-        if np.max(np.abs(direction)) <= RELATIVE_TOLERANCE * (np.max(np.abs(shape)) + 1e-9 * span):
+        shape[:] = before - direction
+        evaluate(model, shape, work, pressure, stretched, 0.0)
+        if step > whole:
+            _shorten(model, shape, work, pressure, stretched, before, direction, slope)
+        moved = np.max(np.abs(direction))
+        if moved <= RELATIVE_TOLERANCE * (np.max(np.abs(shape)) + 1e-9 * span):
             return step
     return -1
 
@@ -236,7 +258,11 @@ def shapes(model: Model, pressures: Floats, stretched: bool) -> tuple[Floats, Fl
             shape = result[p - 1] + ahead * (result[p - 1] - base)
             earlier = pressures[p - 1]
             base = result[p - 1]
-        steps[p] = _descend(model, shape, work, pressures[p], stretched, p == 0)
+        start = shape.copy()
+        steps[p] = _descend(model, shape, work, pressures[p], stretched, p == 0, FULL_STEPS)
+        if steps[p] < 0:
+            shape = start
+            steps[p] = _descend(model, shape, work, pressures[p], stretched, p == 0, 0)
         result[p] = shape
         force[p] = work.force
     return result, force, steps

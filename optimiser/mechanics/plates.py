@@ -51,6 +51,8 @@ def factor(matrix: Floats, reach: Ints, size: int) -> bool:
         for k in range(i + 1, stop):
             scale = matrix[i, k]
             if scale != 0.0:
+                for j in range(reach[k] + 1, stop):
+                    matrix[k, j] = 0.0
                 reach[k] = max(reach[k], reach[i])
                 for j in range(k, stop):
                     matrix[k, j] -= scale * matrix[i, j]
