@@ -183,7 +183,7 @@ def _lift_tables(
         for valve in circuit.valves:
             if valve.name in tops and valve.name not in tables:
                 top = tops[valve.name]
-                tables[valve.name] = lift_table(setup, valve, stacks[valve.name], top, "search")
+                tables[valve.name] = lift_table(setup, valve, stacks[valve.name], top)
         curve = circuit_curve(
             setup.damper, setup.direction, setup.oil_state, fastest, tables, clicks
         )

@@ -4,7 +4,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel
+from optimiser.compiled import kernel, step
 from optimiser.mechanics.layout import Floats, Ints, find_contacts, nearest, radii_between
 from optimiser.mechanics.membrane import inner_factor, outer_factor
 from optimiser.mechanics.plate import pressure_response
@@ -45,7 +45,7 @@ class Model(NamedTuple):
     spring: Floats  # (3,) radius m, rate N/m, preload N
 
 
-@kernel
+@step
 def _fixed_radii(
     groups: Floats, clamp: float, port: Floats, seat: Floats, spring: Floats
 ) -> Floats:
@@ -66,7 +66,7 @@ def _fixed_radii(
     return candidates[:count].copy()
 
 
-@kernel
+@step
 def _gauss_points(radii: Floats, clamp: float) -> tuple[Floats, Floats]:
     """Two Gauss points and weights between consecutive radii, from the clamp outwards."""
     points = np.empty(2 * radii.size)
@@ -81,7 +81,7 @@ def _gauss_points(radii: Floats, clamp: float) -> tuple[Floats, Floats]:
     return points, weights
 
 
-@kernel
+@step
 def _plates(
     groups: Floats,
     count: Ints,
@@ -117,7 +117,7 @@ def _plates(
     return bending, slope, outer
 
 
-@kernel
+@step
 def _contacts(
     groups: Floats,
     radii: Floats,

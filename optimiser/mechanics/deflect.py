@@ -11,7 +11,7 @@ from optimiser.faults import BadInput
 from optimiser.mechanics.assembly import assemble
 from optimiser.mechanics.equilibrium import bending_moments, membrane_forces, shapes
 from optimiser.mechanics.layout import Floats, Ints, group_shims, nearest
-from optimiser.mechanics.quick import Setting, bench, layers_of, profiles
+from optimiser.mechanics.quick import Setting, advance, bench, lay_out, layers_of, profile
 from optimiser.mechanics.tables import tables_for
 
 Fidelity = Literal["linear", "search", "reported"]
@@ -262,12 +262,17 @@ def _quick(question: _Pressed, groups: Floats, ladder: Floats) -> _Profiles:
         SETTLED,
         question.seat > 0.0,
     )
-    rounds, lift, moments, pulls = profiles(
-        tables, layers, setting, ladder, bench(layers.plate.size, tables.nodes.size)
-    )
-    if rounds < 0:
-        raise ArithmeticError("a pressure did not settle")
+    b = bench(layers.plate.size, tables.nodes.size)
+    lay_out(tables, layers, setting, b)
+    found = []
+    ahead = 1.0
+    for p in range(ladder.size):
+        rounds, ahead = advance(tables, layers, setting, ladder, p, ahead, b)
+        if rounds < 0:
+            raise ArithmeticError(f"the shims did not settle at {ladder[p]:g} Pa")
+        found.append(profile(tables, layers, setting, b, ladder[p]))
+    lift, moments, pulls = (np.stack(part) for part in zip(*found, strict=True))
+    face = tables.edge_node[layers.plate[0]] + 1
+    seat_rise = lift[:, 0, tables.seat + 1] - question.seat_height
     radii = np.concatenate([[question.clamp], tables.nodes])
-    face = tables.edge_node[layers.plate[0]]
-    seat_rise = lift[:, 0, tables.seat] - question.seat_height
     return _Profiles(lift[:, 0, face], seat_rise, radii, moments, pulls)

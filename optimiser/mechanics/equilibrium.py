@@ -13,7 +13,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel
+from optimiser.compiled import kernel, step
 from optimiser.mechanics.assembly import Model
 from optimiser.mechanics.layout import Floats, Ints
 from optimiser.mechanics.membrane import inner_factor, outer_factor, stress_function
@@ -66,7 +66,7 @@ def scratch(model: Model) -> Work:
     )
 
 
-@kernel
+@step
 def _bend(model: Model, shape: Floats, work: Work) -> float:
     """Bending energy; sets the gradient and the group blocks of the Hessian."""
     energy = 0.0
@@ -84,7 +84,7 @@ def _bend(model: Model, shape: Floats, work: Work) -> float:
     return energy
 
 
-@kernel
+@step
 def _stretch(model: Model, shape: Floats, work: Work, g: int) -> float:
     """Membrane energy of one group; adds to the gradient and the Hessian."""
     s, k = model.start[g], model.count[g]
@@ -129,7 +129,7 @@ def _stretch(model: Model, shape: Floats, work: Work, g: int) -> float:
     return energy
 
 
-@kernel
+@step
 def _press(model: Model, shape: Floats, work: Work, pressure: float, tight: float) -> float:
     """Pressure, spring and contact energy; adds to the gradient and the Hessian.
 
@@ -182,7 +182,7 @@ def evaluate(
     return energy + _press(model, shape, work, pressure, tight)
 
 
-@kernel
+@step
 def _shorten(
     model: Model, shape: Floats, work: Work, pressure: float, stretched: bool, before: Floats,
     direction: Floats, slope: float,
@@ -206,7 +206,7 @@ def _shorten(
         evaluate(model, shape, work, pressure, stretched, 0.0)
 
 
-@kernel
+@step
 def _descend(
     model: Model, shape: Floats, work: Work, pressure: float, stretched: bool, at_rest: bool,
     whole: int,
@@ -220,7 +220,7 @@ def _descend(
     direction = np.empty(size)
     before = np.empty(size)
     evaluate(model, shape, work, pressure, stretched, TOUCHING * span * at_rest)
-    for step in range(1, MOST_STEPS + 1):
+    for count in range(1, MOST_STEPS + 1):
         direction[:] = work.gradient
         if not factor(work.hessian, work.reach, size):
             return -1
@@ -229,11 +229,11 @@ def _descend(
         before[:] = shape
         shape[:] = before - direction
         evaluate(model, shape, work, pressure, stretched, 0.0)
-        if step > whole:
+        if count > whole:
             _shorten(model, shape, work, pressure, stretched, before, direction, slope)
         moved = np.max(np.abs(direction))
         if moved <= RELATIVE_TOLERANCE * (np.max(np.abs(shape)) + 1e-9 * span):
-            return step
+            return count
     return -1
 
 

@@ -23,7 +23,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel
+from optimiser.compiled import kernel, step
 from optimiser.mechanics.layout import Floats, Ints
 from optimiser.mechanics.tables import POINTS, Tables
 
@@ -106,8 +106,8 @@ class Bench(NamedTuple):
     theta: Floats  # (m, q)
     load: Floats  # (m, q) slope loads
     bent: Floats  # (m, n) moments
-    last_lift: Floats  # (3, m, n) at the last pressures
-    last_theta: Floats  # (3, m, q)
+    last_lift: Floats  # (m, n) at the last pressure
+    last_theta: Floats  # (m, q)
 
 
 @kernel
@@ -123,11 +123,11 @@ def bench(groups: int, nodes: int) -> Bench:
         np.zeros(nodes), np.zeros((contacts, contacts)), np.zeros(contacts), np.zeros(groups), np.zeros(groups),
         np.zeros((groups, nodes)), np.zeros((groups, POINTS)), np.zeros((groups, nodes)),
         np.zeros((groups, POINTS)), np.zeros((groups, POINTS)), np.zeros((groups, nodes + 1)),
-        np.zeros((3, groups, nodes)), np.zeros((3, groups, POINTS)),
+        np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
     )  # fmt: skip
 
 
-@kernel
+@step
 def _choose_nodes(tables: Tables, layers: Layers, b: Bench) -> int:
     """Nodes of this stack: the common ones, every edge, every ring shim's hole; sorted."""
     widest = 0
@@ -154,7 +154,7 @@ def _choose_nodes(tables: Tables, layers: Layers, b: Bench) -> int:
     return count
 
 
-@kernel
+@step
 def _add_contact(b: Bench, front: int, back: int, at: int, gap: float, closed: int) -> None:
     c = b.size[1]
     b.front[c] = front
@@ -166,7 +166,7 @@ def _add_contact(b: Bench, front: int, back: int, at: int, gap: float, closed: i
     b.size[1] = c + 1
 
 
-@kernel
+@step
 def _touch(tables: Tables, layers: Layers, b: Bench) -> None:
     """Contacts between groups at the used nodes, interface after interface."""
     plates, edge_node, used = layers.plate, tables.edge_node, b.used
@@ -193,7 +193,7 @@ def _touch(tables: Tables, layers: Layers, b: Bench) -> None:
 
 
 @kernel
-def _lay_out(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
+def lay_out(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
     """Find this stack's nodes and contacts, and set its stiffnesses."""
     size, used, reach = b.size, b.used, b.reach
     rigidity, soft, lift, theta = b.rigidity, b.soft, b.lift, b.theta
@@ -210,8 +210,10 @@ def _lay_out(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None
                     reach[g] = u + 1
         for u in range(size[0]):
             lift[g, u] = 0.0
+            b.last_lift[g, u] = 0.0
         for q in range(POINTS):
             theta[g, q] = 0.0
+            b.last_theta[g, q] = 0.0
     if setting.seated:
         for u in range(size[0]):
             if used[u] == tables.seat:
@@ -225,7 +227,7 @@ def _lay_out(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None
                 b.flex[size[1] - 1] = 1.0 / setting.spring_rate
 
 
-@kernel
+@step
 def _stretch_loads(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
     """Membrane forces of the last shapes as slope loads, and the added stiffness."""
     membrane, weight, stiffening = tables.membrane, tables.weight, tables.stiffening
@@ -246,7 +248,7 @@ def _stretch_loads(tables: Tables, layers: Layers, setting: Setting, b: Bench) -
             load[g, q] = pi * stretching * weight[plate, q] * total * theta[g, q]
 
 
-@kernel
+@step
 def _without_contact(tables: Tables, layers: Layers, pressure: float, b: Bench) -> None:
     """Deflections and slopes under pressure and slope loads alone."""
     pressed, pressed_slope = tables.pressed, tables.pressed_slope
@@ -274,7 +276,7 @@ def _without_contact(tables: Tables, layers: Layers, pressure: float, b: Bench) 
             free_slope[g, q] = soft * total + kept * theta[g, q]
 
 
-@kernel
+@step
 def _gather(tables: Tables, layers: Layers, b: Bench) -> int:
     """The closed contacts' compliance (lower half) and clearance without them; their number."""
     deflection, plates = tables.deflection, layers.plate
@@ -315,7 +317,7 @@ def _gather(tables: Tables, layers: Layers, b: Bench) -> int:
     return n
 
 
-@kernel
+@step
 def _solve(matrix: Floats, low: Ints, vector: Floats, n: int) -> bool:
     """Cholesky solve with the lower half of ``matrix`` (n, n) from column ``low`` (n,) of each row on;
     ``vector`` (n,) becomes the solution."""
@@ -341,7 +343,7 @@ def _solve(matrix: Floats, low: Ints, vector: Floats, n: int) -> bool:
     return True
 
 
-@kernel
+@step
 def _spread(tables: Tables, layers: Layers, b: Bench) -> None:
     """Deflections with the contact forces."""
     deflection, plates, used, reach = tables.deflection, layers.plate, b.used, b.reach
@@ -363,7 +365,7 @@ def _spread(tables: Tables, layers: Layers, b: Bench) -> None:
                 lift[g, u] += push * deflection[plate, node, used[u]]
 
 
-@kernel
+@step
 def _turn(tables: Tables, layers: Layers, b: Bench) -> None:
     """Slopes with the contact forces."""
     slope, plates, used, at = tables.slope, layers.plate, b.used, b.at
@@ -384,7 +386,7 @@ def _turn(tables: Tables, layers: Layers, b: Bench) -> None:
                 theta[g, q] += push * slope[plates[g], node, q]
 
 
-@kernel
+@step
 def _mistaken(b: Bench, scale: float) -> int:
     """List the contacts that pull though closed, or overlap though open; their number."""
     closed, force, gap, at, lift = b.closed, b.force, b.gap, b.at, b.lift
@@ -415,7 +417,7 @@ def _mistaken(b: Bench, scale: float) -> int:
     return count
 
 
-@kernel
+@step
 def _find_contacts(tables: Tables, layers: Layers, b: Bench, scale: float) -> bool:
     """Principal pivoting from the contacts that were closed last. False when it did not end."""
     size, closed, wrong = b.size, b.closed, b.wrong
@@ -441,22 +443,44 @@ def _find_contacts(tables: Tables, layers: Layers, b: Bench, scale: float) -> bo
     return False
 
 
-@kernel
-def _start(b: Bench, pressures: Floats, p: int, ahead: float) -> None:
+@step
+def _start(layers: Layers, b: Bench, pressures: Floats, p: int, ahead: float) -> None:
     """First guess at a pressure: the last shapes carried on along a power law."""
-    if p == 0:
-        return
-    b.lift[:] = b.last_lift[(p - 1) % 3]
-    b.theta[:] = b.last_theta[(p - 1) % 3]
+    lift, theta = b.lift, b.theta
+    before, turned = b.last_lift, b.last_theta
+    share = 0.0
     if p > 1:
         share = (pressures[p] ** ahead - pressures[p - 1] ** ahead) / (
             pressures[p - 1] ** ahead - pressures[p - 2] ** ahead
         )
-        b.lift[:] += share * (b.lift - b.last_lift[(p - 2) % 3])
-        b.theta[:] += share * (b.theta - b.last_theta[(p - 2) % 3])
+    for g in range(layers.plate.size):
+        for u in range(b.reach[g]):
+            step = lift[g, u] - before[g, u]
+            before[g, u] = lift[g, u]
+            lift[g, u] += share * step
+        for q in range(POINTS):
+            step = theta[g, q] - turned[g, q]
+            turned[g, q] = theta[g, q]
+            theta[g, q] += share * step
 
 
-@kernel
+@step
+def _shrink(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
+    """Scale a first, unstretched shape of every plate to about what its stretching leaves of it."""
+    for g in range(layers.plate.size):
+        if layers.plate[g] < 0:
+            continue
+        tip = b.lift[g, b.reach[g] - 1]
+        stretching = setting.youngs * layers.thick[g] / b.rigidity[g]
+        stiffer = tables.stiffening[layers.plate[g]] * stretching * tip * tip
+        share = 1.0 / (1.0 + stiffer) if stiffer < 1.0 else 0.5 * stiffer ** (-1.0 / 3.0)
+        for u in range(b.reach[g]):
+            b.lift[g, u] *= share
+        for q in range(POINTS):
+            b.theta[g, q] *= share
+
+
+@step
 def settle(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float, scale: float
 ) -> int:
@@ -468,45 +492,15 @@ def settle(
         if not _find_contacts(tables, layers, b, scale):
             return -1
         _turn(tables, layers, b)
+        if rounds == 1 and before == 0.0:
+            _shrink(tables, layers, setting, b)
         after = b.lift[0, b.reach[0] - 1]
         if abs(after - before) <= setting.tolerance * abs(after):
             return rounds
     return -1
 
 
-@kernel
-def _moment(
-    tables: Tables, layers: Layers, b: Bench, pressure: float, g: int, row: int
-) -> float:
-    """Radial moment, N, of a settled group at the clamp (row 0) or at table node row - 1."""
-    plate = layers.plate[g]
-    moment, turned, load = tables.moment, tables.slope_load_moment, b.load
-    fronts, backs, active, force, at, used = b.front, b.back, b.active, b.force, b.at, b.used
-    total = pressure * tables.pressed_moment[plate, row] if g == 0 else 0.0
-    for q in range(POINTS):
-        total -= turned[plate, row, q] * load[g, q]
-    for k in range(b.size[2]):
-        c = active[k]
-        if fronts[c] == g:
-            total -= force[c] * moment[plate, row, used[at[c]]]
-        elif backs[c] == g:
-            total += force[c] * moment[plate, row, used[at[c]]]
-    return total
-
-
-@kernel
-def _pull(tables: Tables, layers: Layers, setting: Setting, b: Bench, g: int, row: int) -> float:
-    """Radial membrane force per length, N/m, at the same places."""
-    plate = layers.plate[g]
-    membrane, theta = tables.membrane_edge, b.theta
-    total = 0.0
-    for q in range(POINTS):
-        total += membrane[plate, row, q] * theta[g, q] * theta[g, q]
-    r = tables.clamp if row == 0 else tables.nodes[row - 1]
-    return 0.5 * setting.youngs * layers.thick[g] * total / r
-
-
-@kernel
+@step
 def _peak_stress(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float
 ) -> float:
@@ -547,26 +541,24 @@ def _peak_stress(
 
 
 @kernel
-def _next(
+def advance(
     tables: Tables, layers: Layers, setting: Setting, pressures: Floats, p: int, ahead: float,
     b: Bench,
 ) -> tuple[int, float]:  # fmt: skip
     """Settle at pressure p, carried on from the ones before; rounds, and the power law from here."""
     face = layers.plate[0]
     tip_node = tables.edge_node[face]
-    _start(b, pressures, p, ahead)
+    _start(layers, b, pressures, p, ahead)
     linear = tables.pressed[face, tip_node] / b.rigidity[0] * pressures[p]
     scale = linear + abs(setting.seat_height) + 1e-9 * tables.clamp
     rounds = settle(tables, layers, setting, b, pressures[p], scale)
-    b.last_lift[p % 3] = b.lift
-    b.last_theta[p % 3] = b.theta
     tip = b.lift[0, b.reach[0] - 1]
     stretching = setting.youngs * layers.thick[0] / b.rigidity[0]
     membrane = tables.stiffening[face] * stretching * tip * tip
     return rounds, (1.0 + membrane) / (1.0 + 3.0 * membrane)
 
 
-@kernel
+@step
 def _seat_rise(tables: Tables, b: Bench, height: float) -> float:
     """Rise of the face shim above the seat, m."""
     for u in range(b.reach[0]):
@@ -585,11 +577,11 @@ def follow(
     Writes the face edge's rise ``edge`` (p,) m, the rise at the seat ``seat`` (p,) m and the largest
     stress of any shim ``stress`` (p,) Pa. Returns the rounds taken, -1 when a pressure did not settle.
     """
-    _lay_out(tables, layers, setting, b)
+    lay_out(tables, layers, setting, b)
     total = 0
     ahead = 1.0
     for p in range(pressures.size):
-        rounds, ahead = _next(tables, layers, setting, pressures, p, ahead, b)
+        rounds, ahead = advance(tables, layers, setting, pressures, p, ahead, b)
         if rounds < 0:
             return -1
         total += rounds
@@ -599,29 +591,36 @@ def follow(
     return total
 
 
-@kernel
-def profiles(
-    tables: Tables, layers: Layers, setting: Setting, pressures: Floats, b: Bench,
-) -> tuple[int, Floats, Floats, Floats]:  # fmt: skip
-    """The same in full: rounds; deflection (p, m, n) m at every table node that matters (0 elsewhere);
-    moments N and membrane forces N/m (p, m, n + 1) at the clamp and there."""
-    m, n = layers.plate.size, tables.nodes.size
-    lift = np.zeros((pressures.size, m, n))
-    moments = np.zeros((pressures.size, m, n + 1))
-    pulls = np.zeros((pressures.size, m, n + 1))
-    _lay_out(tables, layers, setting, b)
-    total = 0
-    ahead = 1.0
-    for p in range(pressures.size):
-        rounds, ahead = _next(tables, layers, setting, pressures, p, ahead, b)
-        if rounds < 0:
-            return -1, lift, moments, pulls
-        total += rounds
-        for g in range(m):
-            for i in range(b.reach[g] + 1 if layers.plate[g] >= 0 else 0):
-                row = 0 if i == 0 else b.used[i - 1] + 1
-                moments[p, g, row] = _moment(tables, layers, b, pressures[p], g, row)
-                pulls[p, g, row] = _pull(tables, layers, setting, b, g, row)
-                if i > 0:
-                    lift[p, g, row - 1] = b.lift[g, i - 1]
-    return total, lift, moments, pulls
+
+class Profile(NamedTuple):
+    """A settled stack in full, at the clamp and every table node (k = n + 1, clamp first)."""
+
+    lift: Floats  # (m, k) m
+    moment: Floats  # (m, k) radial, N
+    pull: Floats  # (m, k) radial membrane force per length, N/m
+
+
+def profile(
+    tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float
+) -> Profile:
+    """Deflection, moment and membrane force of every group as settled at ``pressure``, Pa; zeros
+    at radii that do not matter for the stack."""
+    shape = (layers.plate.size, tables.nodes.size + 1)
+    lift, moment, pull = np.zeros(shape), np.zeros(shape), np.zeros(shape)
+    radii = np.concatenate([[tables.clamp], tables.nodes])
+    active = b.active[: b.size[2]]
+    node = b.used[b.at[active]]
+    force = b.force[active]
+    for g in np.flatnonzero(layers.plate >= 0):
+        plate = layers.plate[g]
+        rows = np.concatenate([[0], b.used[: b.reach[g]] + 1])
+        push = force * ((b.back[active] == g) * 1.0 - (b.front[active] == g))
+        bent = tables.moment[plate][:, node] @ push
+        bent -= tables.slope_load_moment[plate] @ b.load[g]
+        if g == 0:
+            bent += pressure * tables.pressed_moment[plate]
+        stretch = 0.5 * setting.youngs * layers.thick[g] * b.theta[g] ** 2
+        moment[g, rows] = bent[rows]
+        pull[g, rows] = (tables.membrane_edge[plate] @ stretch / radii)[rows]
+        lift[g, rows[1:]] = b.lift[g, : b.reach[g]]
+    return Profile(lift, moment, pull)

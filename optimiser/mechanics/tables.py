@@ -14,7 +14,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel
+from optimiser.compiled import kernel, step
 from optimiser.mechanics.layout import Floats, Ints
 from optimiser.mechanics.membrane import inner_factor, outer_factor
 from optimiser.mechanics.plate import (
@@ -61,7 +61,7 @@ class Tables(NamedTuple):
     stiffening: Floats  # (d,) membrane over bending secant stiffness, x D / (E t w_edge^2)
 
 
-@kernel
+@step
 def _lagrange(points: Floats, k: int, x: float) -> float:
     """Value at x of the polynomial that is 1 at point k and 0 at the others."""
     value = 1.0
@@ -71,7 +71,7 @@ def _lagrange(points: Floats, k: int, x: float) -> float:
     return value
 
 
-@kernel
+@step
 def _membrane_row(
     r: float, points: Floats, clamp: float, edge: float, poisson: float, row: Floats
 ) -> None:
@@ -93,7 +93,7 @@ def _membrane_row(
                 row[k] += half * _FINE_WEIGHTS[g] * green * _lagrange(points, k, s)
 
 
-@kernel
+@step
 def _stiffening(
     theta: Floats, weight: Floats, membrane: Floats, lift: float, work: float
 ) -> float:
