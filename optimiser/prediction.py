@@ -11,6 +11,7 @@ from optimiser.faults import BadInput
 from optimiser.hydraulics.circuit import CircuitCurve, circuit_curve
 from optimiser.hydraulics.lift import Floats, LiftTable, pressure_grid
 from optimiser.hydraulics.oil import OilState, oil_at
+from optimiser.hydraulics.valve import bleed_numbers, drops_at, valve_numbers
 from optimiser.materials import Oil, Steel
 from optimiser.mechanics import BackSpringForce, Deflection, deflect
 from optimiser.mechanics.deflect import RISE_LIMIT, Fidelity
@@ -171,35 +172,57 @@ def lift_table(
     return LiftTable(grid, np.maximum.accumulate(lift))
 
 
-def _lift_tables(
-    setup: Setup, stacks: Mapping[str, Stack], velocity: Floats, clicks: int
+def _tables_reaching(
+    setup: Setup, stacks: Mapping[str, Stack], fastest_m_s: float, clicks: int | None
 ) -> dict[str, LiftTable]:
-    """Tables of every shim valve that reach the pressures met with the adjuster shut."""
+    """Lift tables of the shim valves in ``stacks`` that reach the pressures met at a velocity."""
     circuit = setup.damper.circuit(setup.direction)
-    tops = {valve.name: _FIRST_TOP_PA for valve in circuit.valves if valve.kind == "shim"}
+    valves = [valve for valve in circuit.valves if valve.name in stacks]
+    tops = {valve.name: _FIRST_TOP_PA for valve in valves}
     tables: dict[str, LiftTable] = {}
-    fastest = np.array([velocity.max()])
     while True:
-        for valve in circuit.valves:
-            if valve.name in tops and valve.name not in tables:
-                top = tops[valve.name]
-                tables[valve.name] = lift_table(setup, valve, stacks[valve.name], top)
-        curve = circuit_curve(
-            setup.damper, setup.direction, setup.oil_state, fastest, tables, clicks
-        )
-        short = {v.name for v in curve.valves if v.name in tops and v.beyond_table[0]}
-        short = {name for name in short if tops[name] < _HIGHEST_TOP_PA}
+        for valve in valves:
+            if valve.name not in tables:
+                stack, top = stacks[valve.name], tops[valve.name]
+                tables[valve.name] = lift_table(setup, valve, stack, top)
+        reached = {
+            valve.name: _shim_pressure_pa(setup, valve, tables[valve.name], fastest_m_s, clicks)
+            for valve in valves
+        }
+        short = [name for name, pa in reached.items() if tops[name] < min(pa, _HIGHEST_TOP_PA)]
         if not short:
             break
         for name in short:
             tops[name] *= 2.0
             del tables[name]
-    for valve in circuit.valves:
-        if valve.name in tops:
-            reached = curve.valve(valve.name).shim_pressure_mpa[0] * 1e6
-            top = max(1.2 * reached, 1e3)
-            tables[valve.name] = lift_table(setup, valve, stacks[valve.name], top)
+    for valve in valves:
+        top = min(max(1.2 * reached[valve.name], 1e3), _HIGHEST_TOP_PA)
+        tables[valve.name] = lift_table(setup, valve, stacks[valve.name], top)
     return tables
+
+
+def _shim_pressure_pa(
+    setup: Setup, valve: Valve, table: LiftTable, velocity: float, clicks: int | None
+) -> float:
+    """Pressure across the shims of one valve at a shaft velocity."""
+    oil = setup.oil_state
+    numbers = valve_numbers(valve, setup.damper.body, oil)
+    setting = clicks if valve.searched else None
+    flows = np.array([numbers.area_m2 * velocity])
+    drops, pressure, lift = np.zeros((3, 1))
+    bleed = bleed_numbers(valve, oil, setting)
+    drops_at(numbers, *bleed, table.pressure_pa, table.lift_m, flows, drops, pressure, lift)
+    return float(pressure[0])
+
+
+def fixed_tables(setup: Setup, fastest_m_s: float) -> dict[str, LiftTable]:
+    """Lift tables of the shim valves that are not searched, with the stacks fitted in them."""
+    stacks = {
+        valve.name: valve.fitted
+        for valve in setup.damper.circuit(setup.direction).valves
+        if valve.fitted is not None and not valve.searched
+    }
+    return _tables_reaching(setup, stacks, fastest_m_s, None)
 
 
 def stacks_of(setup: Setup, stack: Stack) -> dict[str, Stack]:
@@ -224,7 +247,7 @@ def predict(
     setting = setup.default_clicks if clicks is None else clicks
     if not 0 <= setting <= setup.clicks_range:
         raise BadInput(f"clicks is {setting}; allowed: 0 (closed) to {setup.clicks_range} (open)")
-    tables = _lift_tables(setup, stacks_of(setup, stack), velocity, setting)
+    tables = _tables_reaching(setup, stacks_of(setup, stack), float(velocity.max()), setting)
 
     def curve_at(count: int) -> CircuitCurve:
         return circuit_curve(

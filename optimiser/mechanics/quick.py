@@ -570,12 +570,12 @@ def _seat_rise(tables: Tables, b: Bench, height: float) -> float:
 @kernel
 def follow(
     tables: Tables, layers: Layers, setting: Setting, pressures: Floats, b: Bench,
-    edge: Floats, seat: Floats, stress: Floats,
+    edge: Floats, seat: Floats, stress: Floats, force: Floats,
 ) -> int:  # fmt: skip
     """Follow a stack along ascending ``pressures`` (p,), Pa.
 
-    Writes the face edge's rise ``edge`` (p,) m, the rise at the seat ``seat`` (p,) m and the largest
-    stress of any shim ``stress`` (p,) Pa. Returns the rounds taken, -1 when a pressure did not settle.
+    Writes the face edge's rise ``edge`` (p,) m, the rise at the seat ``seat`` (p,) m, the largest
+    stress of any shim ``stress`` (p,) Pa and the force on the seat ``force`` (p,) N. Returns the rounds taken, -1 when a pressure did not settle.
     """
     lay_out(tables, layers, setting, b)
     total = 0
@@ -588,6 +588,7 @@ def follow(
         edge[p] = b.lift[0, b.reach[0] - 1]
         seat[p] = _seat_rise(tables, b, setting.seat_height)
         stress[p] = _peak_stress(tables, layers, setting, b, pressures[p])
+        force[p] = b.force[0] if setting.seated else 0.0
     return total
 
 

@@ -30,7 +30,7 @@ Floats = NDArray[np.float64]
 
 #: Radii closer than this share of the free span are one radius.
 SAME = 1e-3
-RELATIVE_TOLERANCE = 1e-9
+RELATIVE_TOLERANCE = 1e-8
 MOST_STEPS = 60
 _ROOTS, _WEIGHTS = np.polynomial.legendre.leggauss(4)
 
@@ -381,7 +381,10 @@ def _settle(stack: Assembly, w: Floats, pressure: float, stretched: bool) -> tup
         span = float(stack.radii[-1])
         if np.max(np.abs(step)) <= RELATIVE_TOLERANCE * (np.max(np.abs(w)) + 1e-9 * span):
             return w, force
-    raise ArithmeticError(f"no equilibrium at {pressure:g} MPa: the last step was {step} mm")
+    last = float(np.max(np.abs(step)))
+    raise ArithmeticError(
+        f"no equilibrium at {pressure:g} MPa: step {MOST_STEPS} was still {last:g} mm"
+    )
 
 
 def _per_shim(
