@@ -32,3 +32,15 @@ def step(function: Callable[P, R]) -> Callable[P, R]:
         no_cpython_wrapper=True, no_cfunc_wrapper=True, **_OPTIONS
     )(function)
     return compiled
+
+
+def inner(function: Callable[P, R]) -> Callable[P, R]:
+    """A step that is written into its caller's machine code.
+
+    Handing over a record of many arrays costs more than the arithmetic of a small stack; used where
+    that counts, as it makes large callers slow to compile.
+    """
+    compiled: Callable[P, R] = numba.njit(
+        no_cpython_wrapper=True, no_cfunc_wrapper=True, forceinline=True, **_OPTIONS
+    )(function)
+    return compiled

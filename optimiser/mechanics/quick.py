@@ -23,7 +23,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel, step
+from optimiser.compiled import inner, kernel
 from optimiser.mechanics.layout import Floats, Ints
 from optimiser.mechanics.tables import POINTS, Tables
 
@@ -127,7 +127,7 @@ def bench(groups: int, nodes: int) -> Bench:
     )  # fmt: skip
 
 
-@step
+@inner
 def _choose_nodes(tables: Tables, layers: Layers, b: Bench) -> int:
     """Nodes of this stack: the common ones, every edge, every ring shim's hole; sorted."""
     widest = 0
@@ -154,7 +154,7 @@ def _choose_nodes(tables: Tables, layers: Layers, b: Bench) -> int:
     return count
 
 
-@step
+@inner
 def _add_contact(b: Bench, front: int, back: int, at: int, gap: float, closed: int) -> None:
     c = b.size[1]
     b.front[c] = front
@@ -166,7 +166,7 @@ def _add_contact(b: Bench, front: int, back: int, at: int, gap: float, closed: i
     b.size[1] = c + 1
 
 
-@step
+@inner
 def _touch(tables: Tables, layers: Layers, b: Bench) -> None:
     """Contacts between groups at the used nodes, interface after interface."""
     plates, edge_node, used = layers.plate, tables.edge_node, b.used
@@ -227,7 +227,7 @@ def lay_out(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
                 b.flex[size[1] - 1] = 1.0 / setting.spring_rate
 
 
-@step
+@inner
 def _stretch_loads(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
     """Membrane forces of the last shapes as slope loads, and the added stiffness."""
     membrane, weight, stiffening = tables.membrane, tables.weight, tables.stiffening
@@ -248,7 +248,7 @@ def _stretch_loads(tables: Tables, layers: Layers, setting: Setting, b: Bench) -
             load[g, q] = pi * stretching * weight[plate, q] * total * theta[g, q]
 
 
-@step
+@inner
 def _without_contact(tables: Tables, layers: Layers, pressure: float, b: Bench) -> None:
     """Deflections and slopes under pressure and slope loads alone."""
     pressed, pressed_slope = tables.pressed, tables.pressed_slope
@@ -276,7 +276,7 @@ def _without_contact(tables: Tables, layers: Layers, pressure: float, b: Bench) 
             free_slope[g, q] = soft * total + kept * theta[g, q]
 
 
-@step
+@inner
 def _gather(tables: Tables, layers: Layers, b: Bench) -> int:
     """The closed contacts' compliance (lower half) and clearance without them; their number."""
     deflection, plates = tables.deflection, layers.plate
@@ -317,7 +317,7 @@ def _gather(tables: Tables, layers: Layers, b: Bench) -> int:
     return n
 
 
-@step
+@inner
 def _solve(matrix: Floats, low: Ints, vector: Floats, n: int) -> bool:
     """Cholesky solve with the lower half of ``matrix`` (n, n) from column ``low`` (n,) of each row on;
     ``vector`` (n,) becomes the solution."""
@@ -343,7 +343,7 @@ def _solve(matrix: Floats, low: Ints, vector: Floats, n: int) -> bool:
     return True
 
 
-@step
+@inner
 def _spread(tables: Tables, layers: Layers, b: Bench) -> None:
     """Deflections with the contact forces."""
     deflection, plates, used, reach = tables.deflection, layers.plate, b.used, b.reach
@@ -365,7 +365,7 @@ def _spread(tables: Tables, layers: Layers, b: Bench) -> None:
                 lift[g, u] += push * deflection[plate, node, used[u]]
 
 
-@step
+@inner
 def _turn(tables: Tables, layers: Layers, b: Bench) -> None:
     """Slopes with the contact forces."""
     slope, plates, used, at = tables.slope, layers.plate, b.used, b.at
@@ -386,7 +386,7 @@ def _turn(tables: Tables, layers: Layers, b: Bench) -> None:
                 theta[g, q] += push * slope[plates[g], node, q]
 
 
-@step
+@inner
 def _mistaken(b: Bench, scale: float) -> int:
     """List the contacts that pull though closed, or overlap though open; their number."""
     closed, force, gap, at, lift = b.closed, b.force, b.gap, b.at, b.lift
@@ -417,7 +417,7 @@ def _mistaken(b: Bench, scale: float) -> int:
     return count
 
 
-@step
+@inner
 def _find_contacts(tables: Tables, layers: Layers, b: Bench, scale: float) -> bool:
     """Principal pivoting from the contacts that were closed last. False when it did not end."""
     size, closed, wrong = b.size, b.closed, b.wrong
@@ -443,7 +443,7 @@ def _find_contacts(tables: Tables, layers: Layers, b: Bench, scale: float) -> bo
     return False
 
 
-@step
+@inner
 def _start(layers: Layers, b: Bench, pressures: Floats, p: int, ahead: float) -> None:
     """First guess at a pressure: the last shapes carried on along a power law."""
     lift, theta = b.lift, b.theta
@@ -464,7 +464,7 @@ def _start(layers: Layers, b: Bench, pressures: Floats, p: int, ahead: float) ->
             theta[g, q] += share * step
 
 
-@step
+@inner
 def _shrink(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
     """Scale a first, unstretched shape of every plate to about what its stretching leaves of it."""
     for g in range(layers.plate.size):
@@ -480,7 +480,7 @@ def _shrink(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
             b.theta[g, q] *= share
 
 
-@step
+@inner
 def settle(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float, scale: float
 ) -> int:
@@ -500,7 +500,7 @@ def settle(
     return -1
 
 
-@step
+@inner
 def _peak_stress(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float
 ) -> float:
@@ -558,7 +558,7 @@ def advance(
     return rounds, (1.0 + membrane) / (1.0 + 3.0 * membrane)
 
 
-@step
+@inner
 def _seat_rise(tables: Tables, b: Bench, height: float) -> float:
     """Rise of the face shim above the seat, m."""
     for u in range(b.reach[0]):

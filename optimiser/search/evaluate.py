@@ -5,7 +5,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel, step
+from optimiser.compiled import inner, kernel
 from optimiser.hydraulics.circuit import fixed_force_n
 from optimiser.hydraulics.lift import pressure_grid
 from optimiser.hydraulics.valve import ValveNumbers, bleed_settings, drops_at, valve_numbers
@@ -63,7 +63,7 @@ class Desk(NamedTuple):
     trial: Floats  # (n,) misfit of the click being tried
 
 
-@step
+@inner
 def _stack_up(plan: Plans, shelf: Shelf, layers: Layers) -> int:
     """Write a plan's groups, face first; their number."""
     count = 0
@@ -84,7 +84,7 @@ def _stack_up(plan: Plans, shelf: Shelf, layers: Layers) -> int:
     return count
 
 
-@step
+@inner
 def _misfit(job: Job, desk: Desk, click: int) -> float:
     """Weighted r.m.s. of force over wanted force less 1 at a click; leaves the points in the desk."""
     drops_at(
@@ -100,7 +100,7 @@ def _misfit(job: Job, desk: Desk, click: int) -> float:
     return float(np.sqrt(total))
 
 
-@step
+@inner
 def _best_click(job: Job, desk: Desk, misfit: Floats) -> tuple[int, float]:
     """Click with the least error, by steps that halve from the middle of the range."""
     count = job.bleed_a.size
@@ -124,7 +124,7 @@ def _best_click(job: Job, desk: Desk, misfit: Floats) -> tuple[int, float]:
     return best, error
 
 
-@step
+@inner
 def _at(table: Floats, pressures: Floats, pressure: float) -> float:
     """Linear interpolation, carried on past the last entry; through 0 before the first."""
     k = 0
@@ -136,7 +136,7 @@ def _at(table: Floats, pressures: Floats, pressure: float) -> float:
     return table[k] + share * (table[k + 1] - table[k])
 
 
-@step
+@inner
 def _with_opening(job: Job, force: Floats, desk: Desk) -> None:
     """Lift table of the desk, with the opening pressure in place of the last closed entry.
 
