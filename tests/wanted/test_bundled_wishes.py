@@ -35,7 +35,7 @@ def test_every_feel_keeps_the_rebound_rule(name):
 def test_feels_differ_from_each_other():
     frame, rider = read_frame("forest-motorcycle"), read_rider("middle-rider")
     curves = [
-        np.log([t.force_at([0.06, 0.2, 0.7]) for t in (d.compression, d.rebound)])
+        np.log([t.force_at([0.06, 0.2, 0.6]) for t in (d.compression, d.rebound)])
         for d in (derive(rider, frame, read_feel(name)) for name in bundled_names("feel"))
     ]
     for index, one in enumerate(curves):
