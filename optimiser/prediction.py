@@ -159,17 +159,30 @@ def opening_pressure_pa(
     return low
 
 
-def lift_table(
-    setup: Setup, valve: Valve, stack: Stack, top_pa: float, fidelity: Fidelity = "reported"
-) -> LiftTable:
-    """Seat lift of a stack up to ``top_pa``, with the pressure that opens it as an entry."""
+def bend_table(
+    setup: Setup,
+    valve: Valve,
+    stack: Stack,
+    top_pa: float,
+    fidelity: Fidelity = "reported",
+    entries: int = ENTRIES,
+) -> tuple[LiftTable, Deflection]:
+    """Seat lift of a stack up to ``top_pa``, with the pressure that opens it as an entry, and the
+    deflection it comes from, at the table's pressures."""
     opens = opening_pressure_pa(setup, valve, stack, top_pa, fidelity)
-    grid = pressure_grid(top_pa, ENTRIES, opens if opens < 0.98 * top_pa else 0.0)
+    grid = pressure_grid(top_pa, entries, opens if opens < 0.98 * top_pa else 0.0)
     found = bend(setup, valve, stack, grid * 1e-6, fidelity)
     lift = found.seat_lift_mm * 1e-3
     if opens > 0.0:
         lift[grid <= opens] = 0.0
-    return LiftTable(grid, np.maximum.accumulate(lift))
+    return LiftTable(grid, np.maximum.accumulate(lift)), found
+
+
+def lift_table(
+    setup: Setup, valve: Valve, stack: Stack, top_pa: float, fidelity: Fidelity = "reported"
+) -> LiftTable:
+    """The table of :func:`bend_table` alone."""
+    return bend_table(setup, valve, stack, top_pa, fidelity)[0]
 
 
 def _tables_reaching(

@@ -37,10 +37,12 @@ class Archive:
         self.space = space
         self.rise_max = rise_max
         self.model_seconds = 0.0
+        self.best_error = float("inf")  # within the model's range
         self._evaluator = evaluator
         self._place: dict[bytes, int] = {}
         self._plans = np.zeros((1024, space.width), dtype=np.int16)
         self._table = np.zeros((1024, 6))  # error, parts, utilisation, changed, clicks, rise
+        self._misfit = np.zeros((1024, 0))
 
     def __len__(self) -> int:
         return len(self._place)
@@ -59,6 +61,11 @@ class Archive:
     def objectives(self) -> Floats:
         """(evaluated, 3 or 4) error, parts, utilisation, changed shims in revalve mode."""
         return self._table[: len(self), : 4 if self.revalve else 3]
+
+    @property
+    def misfit(self) -> Floats:
+        """(evaluated, points) weighted misfit at each point of the target."""
+        return self._misfit[: len(self)]
 
     @property
     def rise(self) -> Floats:
@@ -107,7 +114,7 @@ class Archive:
         error, parts, utilisation, changed, clicks, rise = self._table[chosen].T
         return Record(
             self._plans[chosen],
-            Scores(error, utilisation, clicks, rise),
+            Scores(error, utilisation, clicks, rise, self._misfit[chosen]),
             parts.astype(np.int64),
             changed.astype(np.int64),
             rise > self.rise_max,
@@ -118,16 +125,22 @@ class Archive:
         scores = self._evaluator.evaluate(plans)
         self.model_seconds += perf_counter() - start
         first, last = len(self), len(self) + len(plans)
+        if first == 0:
+            self._misfit = np.zeros((len(self._plans), scores.misfit.shape[1]))
         while last > len(self._plans):
             self._plans = np.concatenate([self._plans, np.zeros_like(self._plans)])
             self._table = np.concatenate([self._table, np.zeros_like(self._table)])
+            self._misfit = np.concatenate([self._misfit, np.zeros_like(self._misfit)])
         changed = self.space.changed(plans) if self.revalve else np.zeros(len(plans))
         columns = (scores.error, self.space.parts(plans), scores.utilisation, changed)
         table = np.column_stack([*columns, scores.clicks, scores.rise])
-        if not np.isfinite(table).all():
+        if not (np.isfinite(table).all() and np.isfinite(scores.misfit).all()):
             raise FloatingPointError("the model returned scores that are not finite")
         self._plans[first:last] = plans
         self._table[first:last] = table
+        self._misfit[first:last] = scores.misfit
+        within = scores.error[scores.rise <= self.rise_max]
+        self.best_error = min(self.best_error, float(within.min(initial=np.inf)))
         self._place.update((key, first + row) for row, key in enumerate(keys(plans)))
 
 

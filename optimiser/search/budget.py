@@ -63,13 +63,12 @@ class Budget:
     def report(self, stage: Stage) -> None:
         """Tell the caller where the search is."""
         archive = self.archive
-        within = archive.objectives[archive.within, 0]
         self._progress(
             Progress(
                 stage,
                 self.generation,
                 len(archive),
-                float(within.min(initial=float("inf"))),
+                archive.best_error,
                 min(len(archive) / max(self.evaluations, 1), 1.0),
                 self.seconds,
             )

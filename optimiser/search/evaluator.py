@@ -13,17 +13,21 @@ from optimiser.search.sizes import Floats
 
 @dataclass(frozen=True)
 class Scores:
-    """What the model says of plans; every array has shape (plans,) and is finite.
+    """What the model says of plans; arrays have shape (plans,) and are finite.
 
     ``error`` is the weighted r.m.s. of force over wanted force minus 1 at the best click (a
     fraction), ``utilisation`` the peak fatigue utilisation, ``clicks`` the best click setting,
-    ``rise`` the greatest edge rise over thickness (a fraction).
+    ``rise`` the greatest edge rise over thickness (a fraction). ``misfit`` has shape
+    (plans, points): force over wanted force minus 1, times the root of the point's share of the
+    weight, so that ``error`` is the length of its rows; it may have no points, then the local
+    pass has less to go by.
     """
 
     error: Floats
     utilisation: Floats
     clicks: Floats
     rise: Floats
+    misfit: Floats
 
     def __len__(self) -> int:
         return len(self.error)
@@ -32,14 +36,8 @@ class Scores:
     def join(cls, parts: Iterable["Scores"]) -> "Scores":
         """Scores of consecutive batches as one."""
         kept = list(parts)
-        return cls(
-            *(np.concatenate([getattr(p, f.name) for p in kept]).astype(float) for f in fields(cls))
-        )
-
-    @classmethod
-    def none(cls) -> "Scores":
-        """Scores of no plans."""
-        return cls(*(np.zeros(0) for _ in fields(cls)))
+        names = [item.name for item in fields(cls)]
+        return cls(*(np.concatenate([getattr(part, name) for part in kept]) for name in names))
 
 
 class Evaluator(Protocol):

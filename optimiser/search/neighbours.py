@@ -36,6 +36,26 @@ class Neighbours:
             self._change(counts, kind, rng)
         return self._finish([counts])
 
+    def combined(self, plan: Plans, ones: Plans, others: Plans) -> tuple[Plans, Ints]:
+        """Buildable plans with the changes of two others at once, and which pairs they stem from.
+
+        ``ones`` and ``others`` (pairs, width) differ from ``plan`` (width,) by some changes. Pairs
+        that both change the crossover, or both the clamp diameter, are left out. Order is kept.
+        """
+        base = self.space.decode(plan.reshape(1, -1))
+        one, other = self.space.decode(ones), self.space.decode(others)
+        clamps = [self.space.diameter[counts.clamp] for counts in (base, one, other)]
+        clash = (one.crossover != base.crossover) & (other.crossover != base.crossover)
+        clash |= (clamps[1] != clamps[0]) & (clamps[2] != clamps[0])
+        both = Counts(
+            one.pieces + other.pieces - base.pieces,
+            np.where(one.crossover != base.crossover, one.crossover, other.crossover),
+            np.where(clamps[1] != clamps[0], one.clamp, other.clamp),
+        )
+        pairs = np.flatnonzero(~clash)
+        plans, sound = self._sound(both.pick(pairs))
+        return plans, pairs[sound]
+
     def _pieces(self, counts: Counts) -> list[Counts]:
         """One shim added, taken out, exchanged, or moved to the other stage."""
         single = counts.pieces[0]
@@ -86,19 +106,25 @@ class Neighbours:
         counts.clamp = np.where(kind == 5, clamp, counts.clamp)
 
     def _finish(self, batches: list[Counts]) -> Plans:
-        """Rows with the clamp shim chosen, without impossible ones and repetitions."""
-        counts = Counts(
-            np.concatenate([b.pieces for b in batches]),
-            np.concatenate([b.crossover for b in batches]),
-            np.concatenate([b.clamp for b in batches]),
+        """Buildable rows of all batches, without repetitions."""
+        plans, _ = self._sound(
+            Counts(
+                np.concatenate([b.pieces for b in batches]),
+                np.concatenate([b.crossover for b in batches]),
+                np.concatenate([b.clamp for b in batches]),
+            )
         )
+        return np.unique(plans, axis=0) if len(plans) else plans
+
+    def _sound(self, counts: Counts) -> tuple[Plans, Ints]:
+        """Buildable rows in their order, with the clamp shim chosen anew, and their places."""
         sound = (counts.pieces >= 0).all(axis=(1, 2)) & counts.pieces[:, 0].any(axis=1)
         sound &= counts.pieces.sum(axis=(1, 2)) + counts.two_stage < self.space.rules.parts
-        counts = counts.pick(sound)
+        place = np.flatnonzero(sound)
+        counts = counts.pick(place)
         counts.clamp = self.space.choose_clamp(counts, self.space.diameter[counts.clamp]).size
-        plans = self.space.encode(counts)
-        plans = plans[self.space.buildable(plans)]
-        return np.unique(plans, axis=0) if len(plans) else plans
+        good = np.flatnonzero(~self.space.broken(counts).any(axis=1))
+        return self.space.encode(counts.pick(good)), place[good]
 
 
 def _with_pieces(counts: Counts, pieces: Ints) -> Counts:

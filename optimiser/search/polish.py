@@ -6,32 +6,46 @@ gain starts the sequence anew. A stack's neighbourhood is looked at once.
 """
 
 from dataclasses import dataclass
+from typing import Literal
 
 import numpy as np
 
 from optimiser.search.archive import Archive, best_of
 from optimiser.search.budget import Budget
+from optimiser.search.counts import Plans
 from optimiser.search.neighbours import Neighbours
 from optimiser.search.repair import Random
 from optimiser.search.sizes import Floats, Ints
 
-_BATCH = 4096
+_EFFECTS = 300  # single changes that are combined: those with the least effect
+_BEAM = 200  # combinations of changes kept for each number of changes
 _LOOKED_AT = 100  # front members compared when the next one to explore is chosen
+
+
+Move = Literal["single", "paired", "random"]
+Work = tuple[int, Move]
 
 
 @dataclass(frozen=True)
 class Effort:
     """How hard the local pass tries.
 
-    ``double_tries`` double changes are tried at a time for each champion, at most
-    ``double_rounds`` times; champions further than ``keen`` times the best error (plus one
-    percentage point) from the best are left alone until the others are done.
+    Single changes are tried in batches of at least ``batch``, promising pairs in batches of
+    ``paired``; ``random`` double changes a round and ``random_rounds`` rounds for each champion;
+    the neighbourhoods of ``runners_up`` further stacks at the end. Champions with more than
+    ``keen`` times the least error (plus one percentage point) are left alone.
     """
 
-    double_tries: int = 400
-    double_rounds: int = 6
-    keen: float = 3.0
+    batch: int = 48
+    paired: int = 20
+    paired_rounds: int = 3
+    depth: int = 3
+    hope: float = 1.3
+    random: int = 100
+    random_rounds: int = 6
     runners_up: int = 100
+    keen: float = 3.0
+    enough: float = 0.0005
 
 
 class Polish:
@@ -45,14 +59,18 @@ class Polish:
         self.rng = rng
         self.effort = effort or Effort()
         self.neighbours = Neighbours(archive.space)
-        self._explored: set[int] = set()
+        self._singled: set[int] = set()
+        self._paired: set[int] = set()
+        self._waiting: dict[int, Plans] = {}
         self._rounds: dict[int, int] = {}
+        self._pair_rounds: dict[int, int] = {}
         self._by_parts: dict[int, int] = {}
         self._by_family: dict[int, int] = {}
         self._front = np.zeros(0, dtype=np.int64)
         self._seen = 0
         self._any_within = False
         self._ran = 0
+        self._turn = False
 
     def run(self) -> None:
         """Improve until nothing helps, the evaluations are spent or the user stops."""
@@ -64,20 +82,58 @@ class Polish:
             self._explore(*work)
             self.budget.report("polish")
 
-    def _explore(self, row: int, double: bool) -> None:
-        plan = self.archive.plans[row]
-        if double:
-            self._rounds[row] = self._rounds.get(row, 0) + 1
-            plans = self.neighbours.double(plan, self.effort.double_tries, self.rng)
+    def _explore(self, row: int, how: Move) -> None:
+        """Evaluate some changes of one row; a better stack is followed before the rest is tried."""
+        plan, effort = self.archive.plans[row], self.effort
+        if how == "single":
+            waiting = self._waiting.pop(row, None)
+            if waiting is None:
+                waiting = self.rng.permutation(self.neighbours.single(plan))
+            waiting = self.archive.fresh(waiting)
+            first = max(effort.batch, len(waiting) // 8)
+            plans = waiting[:first]
+            if len(waiting) > first:
+                self._waiting[row] = waiting[first:]
+            else:
+                self._singled.add(row)
+        elif how == "paired":
+            plans = self._promising(row)
+            self._pair_rounds[row] = self._pair_rounds.get(row, 0) + 1
+            if len(plans) < effort.paired or self._pair_rounds[row] >= effort.paired_rounds:
+                self._paired.add(row)
         else:
-            self._explored.add(row)
-            plans = self.neighbours.single(plan)
-        plans = self.archive.fresh(plans)[: self.budget.left]
-        for start in range(0, len(plans), _BATCH):
-            if start and not self.budget.goes_on():
-                return
-            self.archive.rows(plans[start : start + _BATCH])
+            self._rounds[row] = self._rounds.get(row, 0) + 1
+            plans = self.archive.fresh(self.neighbours.double(plan, effort.random, self.rng))
+        self.archive.rows(plans[: self.budget.left])
         self._notice()
+
+    def _promising(self, row: int) -> Plans:
+        """Untried plans some changes away that should be good if the changes' effects add up.
+
+        Known single changes are combined two at a time, the best of these with a third, and so
+        on; from each number of changes the most promising plans are taken.
+        """
+        archive, effort = self.archive, self.effort
+        plan, misfit = archive.plans[row], archive.misfit[row]
+        near = self.neighbours.single(plan)
+        near = near[archive.known(near)]
+        effect = archive.misfit[archive.rows(near)] - misfit
+        found = [near[:0]]
+        small = np.argsort((effect**2).sum(axis=1), kind="stable")[:_EFFECTS]
+        near, effect = near[small], effect[small]
+        if effect.size == 0:
+            return near[:0]
+        limit = effort.hope**2 * float((misfit**2).sum())
+        beam, reached = near, misfit + effect
+        for _ in range(effort.depth):
+            one, other = _best_sums(reached, effect, _BEAM, limit)
+            beam, kept = self.neighbours.combined(plan, beam[one], near[other])
+            reached = (reached[one] + effect[other])[kept]
+            beam, first = np.unique(beam, axis=0, return_index=True)
+            reached = reached[first]
+            order = np.argsort((reached**2).sum(axis=1), kind="stable")
+            found.append(archive.fresh(beam[order])[: effort.paired])
+        return archive.fresh(np.concatenate(found))
 
     def _notice(self) -> None:
         """Take the rows evaluated since the last time into the champions and the front."""
@@ -117,36 +173,56 @@ class Polish:
             if old is None or errors[row] < errors[old]:
                 champions[kind] = row
 
-    def _next(self) -> tuple[int, bool] | None:
-        """The row to work on and whether by double changes; None when all is done."""
+    def _next(self) -> Work | None:
+        """The row to work on and how; None when all is done."""
         by_parts, by_family = self._keen(self._by_parts), self._keen(self._by_family)
-        for row in (*by_parts, *by_family):
-            if row not in self._explored:
-                return row, False
-        tired = self._least_tried(by_parts, 1)
-        if tired is not None:
-            return tired, True
-        lonely = self._unexplored()
-        if len(lonely):
-            return int(lonely[0]), False
-        everyone = [*by_parts, *by_family, *self._keen(dict(enumerate(self._front.tolist())))]
-        tired = self._least_tried(everyone, self.effort.double_rounds)
-        if tired is not None:
-            return tired, True
-        runner_up = self._runner_up()
-        return None if runner_up is None else (runner_up, False)
+        work = self._systematic(by_parts) or self._systematic(by_family)
+        if work:
+            return work
+        self._turn = not self._turn
+        rest = (self._on_front, lambda: self._at_random([*by_parts, *by_family]))
+        for choose in rest if self._turn else rest[::-1]:
+            work = choose()
+            if work:
+                return work
+        return self._runner_up()
 
-    def _runner_up(self) -> int | None:
-        """The lowest error whose neighbourhood is unknown, among a bounded number."""
+    def _systematic(self, rows: list[int]) -> Work | None:
+        """Single changes of the first row that lacks them, then its promising pairs."""
         errors = self.archive.objectives[:, 0]
-        count = min(self.effort.runners_up + len(self._explored), len(errors) - 1)
+        for row in rows:
+            if row not in self._singled:
+                return row, "single"
+            if row not in self._paired and errors[row] > self.effort.enough:
+                return row, "paired"
+        return None
+
+    def _on_front(self) -> Work | None:
+        """The loneliest of some front rows whose neighbourhood is unknown."""
+        front = np.setdiff1d(self._front, _as_rows(self._singled))
+        if len(front) == 0:
+            return None
+        if len(front) > _LOOKED_AT:
+            front = np.sort(self.rng.choice(front, _LOOKED_AT, replace=False))
+        return int(front[_loneliest(self.archive.objectives[front])]), "single"
+
+    def _at_random(self, rows: list[int]) -> Work | None:
+        """The first of the rows with the fewest rounds of random changes."""
+        left = [row for row in rows if self._rounds.get(row, 0) < self.effort.random_rounds]
+        if not left:
+            return None
+        return min(left, key=lambda row: self._rounds.get(row, 0)), "random"
+
+    def _runner_up(self) -> Work | None:
+        """The lowest error whose neighbourhood is unknown, for a bounded number of times."""
+        errors = self.archive.objectives[:, 0]
+        count = min(len(self._singled) + 1, len(errors)) - 1
         best = np.argpartition(errors, count)[: count + 1]
-        explored = np.fromiter(self._explored, np.int64, len(self._explored))
-        left = np.setdiff1d(best, explored)
+        left = np.setdiff1d(best, _as_rows(self._singled))
         if len(left) == 0 or self._ran >= self.effort.runners_up:
             return None
         self._ran += 1
-        return int(left[np.lexsort((left, errors[left]))[0]])
+        return int(left[np.lexsort((left, errors[left]))[0]]), "single"
 
     def _keen(self, champions: dict[int, int]) -> list[int]:
         """Champions not much worse than the best of them, best first."""
@@ -157,28 +233,30 @@ class Polish:
         limit = self.effort.keen * errors[ranked[0]] + 0.01
         return [row for row in ranked if errors[row] <= limit]
 
-    def _least_tried(self, rows: list[int], most: int) -> int | None:
-        """The first of the rows with the fewest rounds of double changes, below ``most``."""
-        left = [row for row in rows if self._rounds.get(row, 0) < most]
-        return min(left, key=lambda row: self._rounds.get(row, 0)) if left else None
 
-    def _unexplored(self) -> Ints:
-        """Some front rows whose neighbourhood is unknown, loneliest first."""
-        explored = np.fromiter(self._explored, np.int64, len(self._explored))
-        front = np.setdiff1d(self._front, explored)
-        if len(front) > _LOOKED_AT:
-            front = np.sort(self.rng.choice(front, _LOOKED_AT, replace=False))
-        if len(front) < 2:
-            return front
-        return front[np.argsort(-_loneliness(self.archive.objectives[front]), kind="stable")]
+def _as_rows(rows: set[int]) -> Ints:
+    return np.fromiter(rows, np.int64, len(rows))
 
 
-def _loneliness(objectives: Floats) -> Floats:
-    """(rows,) distance to the nearest other row, error on a logarithmic scale."""
+def _best_sums(reached: Floats, effect: Floats, most: int, limit: float) -> tuple[Ints, Ints]:
+    """Pairs of rows whose sum has the least square, at most ``most`` and below ``limit``."""
+    if len(reached) == 0 or len(effect) == 0:
+        return np.zeros(0, dtype=np.int64), np.zeros(0, dtype=np.int64)
+    squares = (reached**2).sum(axis=1)[:, None] + (effect**2).sum(axis=1)
+    hoped = (squares + 2 * reached @ effect.T).ravel()
+    low = np.flatnonzero(hoped < limit)
+    if len(low) > most:
+        low = low[np.argpartition(hoped[low], most)[:most]]
+    one, other = np.divmod(low, len(effect))
+    return one, other
+
+
+def _loneliest(objectives: Floats) -> int:
+    """The row (rows, objectives) farthest from its nearest other, error taken logarithmically."""
     scaled = objectives.copy()
     scaled[:, 0] = np.log(scaled[:, 0] + 0.01)
     spread = np.ptp(scaled, axis=0)
     scaled = scaled / np.where(spread > 0, spread, 1.0)
     apart = np.abs(scaled[:, None, :] - scaled[None, :, :]).max(axis=2)
     np.fill_diagonal(apart, np.inf)
-    return np.asarray(apart.min(axis=1))
+    return int(np.argmax(apart.min(axis=1)))

@@ -45,7 +45,7 @@ class Repair:
         self._settle_parts(counts, rng)
         self._settle_height(counts, clamp, rng)
         plans = self.space.encode(counts)
-        bad = np.flatnonzero(~self.space.buildable(plans))
+        bad = np.flatnonzero(self.space.broken(counts).any(axis=1))
         plans[bad] = self.reserve[rng.integers(len(self.reserve), size=len(bad))]
         return plans
 

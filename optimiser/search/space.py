@@ -192,33 +192,40 @@ class Space:
     def violations(self, plans: Plans) -> Mask:
         """(plans, rules) which of ``BROKEN_RULES`` each row breaks."""
         counts = self.decode(plans)
-        if len(self.sizes) == 0:
-            return np.ones((len(plans), len(BROKEN_RULES)), dtype=bool)
-        first, second = counts.pieces[:, 0], counts.pieces[:, 1]
-        crossed, filled = counts.two_stage, second.any(axis=1)
-        face, second_face = self.widest(first), self.widest(second)
-        empty = ~first.any(axis=1) | (counts.clamp < 0)
-        foreign = (plans != self.encode(counts)).any(axis=1)
-        last_face = np.minimum(face, len(self.outer_of) - 1)
-        cross = self.diameter[counts.crossover]
-        last_first = np.where(first > 0, self.diameter, NONE).max(axis=1, initial=NONE)
-        return np.column_stack(
-            [
-                foreign | empty | (crossed != filled),
-                ~np.isin(1 + crossed, self.rules.stages),
-                self.outer_of[last_face] < self.rules.cover_mm - SLACK_MM,
-                self.face_pieces(counts) < self.rules.face_min,
-                second_face < face,
-                crossed & ((cross <= last_first) | (cross <= second_face)),
-                self._clamp_too_wide(counts),
-                self._over_stock(counts),
-                self._outside_limits(counts),
-            ]
-        )
+        broken = self.broken(counts)
+        if len(self.sizes):
+            broken[:, 0] |= (plans != self.encode(counts)).any(axis=1)
+        return broken
 
     def buildable(self, plans: Plans) -> Mask:
         """(plans,) whether a row keeps every rule."""
         return ~self.violations(plans).any(axis=1)
+
+    def broken(self, counts: Counts) -> Mask:
+        """(plans, rules) which of ``BROKEN_RULES`` counts break."""
+        if len(self.sizes) == 0:
+            return np.ones((len(counts), len(BROKEN_RULES)), dtype=bool)
+        first, second = counts.pieces[:, 0], counts.pieces[:, 1]
+        crossed, filled = counts.two_stage, second.any(axis=1)
+        face, second_face = self.widest(first), self.widest(second)
+        last_face = np.minimum(face, len(self.outer_of) - 1)
+        cross = self.diameter[counts.crossover]
+        last_first = np.where(first > 0, self.diameter, NONE).max(axis=1, initial=NONE)
+        of_face = first * (self.diameter == face[:, None])
+        pieces, possible = self._clamp_pieces(counts)
+        return np.column_stack(
+            [
+                ~first.any(axis=1) | (counts.clamp < 0) | (crossed != filled),
+                ~np.isin(1 + crossed, self.rules.stages),
+                self.outer_of[last_face] < self.rules.cover_mm - SLACK_MM,
+                of_face.sum(axis=1) < self.rules.face_min,
+                second_face < face,
+                crossed & ((cross <= last_first) | (cross <= second_face)),
+                self._clamp_too_wide(counts),
+                (self._used(counts, pieces) > self.sizes.quantity).any(axis=1),
+                ~possible,
+            ]
+        )
 
     def _clamp_too_wide(self, counts: Counts) -> Mask:
         clamp = self.diameter[counts.clamp]
@@ -230,20 +237,16 @@ class Space:
         match = self.clamp_sizes == counts.clamp[:, None]
         return (pieces * match).sum(axis=1), (possible & match).any(axis=1)
 
-    def _over_stock(self, counts: Counts) -> Mask:
-        return np.asarray((self.used(counts) > self.sizes.quantity).any(axis=1))
-
-    def _outside_limits(self, counts: Counts) -> Mask:
-        return ~self._clamp_pieces(counts)[1]
-
     def used(self, counts: Counts) -> Ints:
         """(plans, sizes) pieces of each size, crossover and clamp shims included."""
+        return self._used(counts, self._clamp_pieces(counts)[0])
+
+    def _used(self, counts: Counts, clamp_pieces: Ints) -> Ints:
         used = counts.pieces.sum(axis=1)
         crossed = np.flatnonzero(counts.two_stage)
         used[crossed, counts.crossover[crossed]] += 1
-        pieces, _ = self._clamp_pieces(counts)
         clamped = np.flatnonzero(counts.clamp >= 0)
-        used[clamped, counts.clamp[clamped]] += pieces[clamped]
+        used[clamped, counts.clamp[clamped]] += clamp_pieces[clamped]
         return used
 
     def parts(self, plans: Plans) -> Ints:

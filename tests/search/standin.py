@@ -100,10 +100,12 @@ class StandIn:
         """Scores of (plans, width) rows."""
         self.asked += len(plans)
         force, rise, utilisation = self.forces(plans)
-        off = np.sqrt(((force / self.force_n - 1) ** 2).mean(axis=2))
+        misfit = (force / self.force_n - 1) / np.sqrt(force.shape[2])
+        off = np.sqrt((misfit**2).sum(axis=2))
         best = np.argmin(off, axis=1)
-        error = off[np.arange(len(plans)), best]
-        return Scores(error, utilisation, CLICKS[best].astype(float), rise)
+        row = np.arange(len(plans))
+        clicks = CLICKS[best].astype(float)
+        return Scores(off[row, best], utilisation, clicks, rise, misfit[row, best])
 
 
 def forces(

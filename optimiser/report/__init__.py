@@ -1,0 +1,1 @@
+"""What a person looks at: tables, drawings, charts. Data in, things to show out."""

@@ -1,0 +1,100 @@
+"""The softest and the firmest stacks of a space: what the stock alone allows."""
+
+import numpy as np
+
+from optimiser.hydraulics.circuit import limit_forces_n
+from optimiser.prediction import Setup, fixed_tables
+from optimiser.search.counts import Counts, Plans
+from optimiser.search.evaluate import ModelEvaluator, make_job
+from optimiser.search.operators import sample
+from optimiser.search.repair import Repair
+from optimiser.search.sizes import Floats
+from optimiser.search.space import Space
+from optimiser.wanted.feasible import Limits
+from optimiser.wanted.target import Target
+
+_SAMPLED = 400
+
+
+def limits_of(setup: Setup, space: Space, target: Target) -> Limits:
+    """Forces at the target's velocities that bound every stack of the space.
+
+    The parts' own limits are exact; the stock's are the extremes of single-shim stacks, of
+    stacks as thick as the rules allow, and of a seeded sample (quick model).
+    """
+    even = Target.of(target.velocity_m_s, target.force_n, direction=target.direction)
+    plans = _extreme_plans(space)
+    softest = _forces(setup, space, even, plans, setup.clicks_range).min(axis=0)
+    firmest = _forces(setup, space, even, plans, 0).max(axis=0)
+    oil, velocity = setup.oil_state, target.velocity_m_s
+    fixed = fixed_tables(setup, float(velocity[-1]))
+    ends = [
+        limit_forces_n(setup.damper, setup.direction, oil, velocity, fixed, clicks)
+        for clicks in (setup.clicks_range, 0)
+    ]
+    seat = setup.valve.seat
+    return Limits.of(
+        ends[0][0],
+        np.minimum(ends[1][1], 1e9),
+        softest,
+        firmest,
+        make_job(setup, even, (0, 0)).fixed,
+        preloaded=seat is not None and seat.height_mm > 0.0,
+    )
+
+
+def _forces(
+    setup: Setup, space: Space, target: Target, plans: Plans, clicks: int
+) -> Floats:
+    """(plans, points) force, N, at one click setting."""
+    scores = ModelEvaluator(setup, space, target, (clicks, clicks)).evaluate(plans)
+    share = np.sqrt(1.0 / len(target))
+    return target.force_n * (1.0 + scores.misfit / share)
+
+
+def _extreme_plans(space: Space) -> Plans:
+    rng = np.random.default_rng(0)
+    repair = Repair(space)
+    made = [sample(repair, _SAMPLED, rng), repair.counts(_single_shims(space), rng)]
+    made.append(repair.counts(_thickest(space), rng))
+    plans = np.concatenate(made)
+    return np.unique(plans[space.buildable(plans)], axis=0)
+
+
+def _single_shims(space: Space) -> Counts:
+    """One face shim over each clamp shim."""
+    faces = np.flatnonzero(space.may_face[space.diameter])
+    face, clamp = (grid.ravel() for grid in np.meshgrid(faces, space.clamp_sizes))
+    pieces = np.zeros((face.size, 2, len(space.sizes)), dtype=np.int64)
+    pieces[np.arange(face.size), 0, face] = space.rules.face_min
+    return Counts(pieces, np.full(face.size, -1), clamp)
+
+
+def _thickest(space: Space) -> Counts:
+    """As many of the thickest wide shims as parts and height allow, over each clamp shim."""
+    rules, sizes = space.rules, space.sizes
+    faces = np.flatnonzero(space.may_face)
+    rows = []
+    for face in faces:
+        wide = np.flatnonzero(space.diameter >= face)
+        order = wide[np.lexsort((-sizes.thickness_mm[wide], space.diameter[wide]))]
+        rows.append(_filled(space, order))
+    pieces = np.zeros((len(rows), 2, len(sizes)), dtype=np.int64)
+    pieces[:, 0] = np.stack(rows)
+    clamp = np.repeat(space.clamp_sizes, len(rows))
+    pieces = np.tile(pieces, (len(space.clamp_sizes), 1, 1))
+    assert rules.parts >= 2
+    return Counts(pieces, np.full(len(clamp), -1), clamp)
+
+
+def _filled(space: Space, order: np.ndarray) -> np.ndarray:
+    """Pieces of each size, taken in ``order`` until parts or height run out."""
+    taken = np.zeros(len(space.sizes), dtype=np.int64)
+    room, height = space.rules.parts - 1, space.rules.height_max_mm - 0.1
+    for size in order:
+        fits = int(max(0.0, height) / space.sizes.thickness_mm[size] + 1e-9)
+        count = min(int(space.sizes.quantity[size]), room, fits)
+        taken[size] = count
+        room -= count
+        height -= count * float(space.sizes.thickness_mm[size])
+    return taken
