@@ -131,7 +131,7 @@ def bend(
         setup.steel.youngs_mpa,
         setup.steel.poisson,
         fidelity,
-        spring and BackSpringForce(spring.ring_mm, spring.rate_n_mm, spring.preload_n),
+        BackSpringForce(spring.ring_mm, spring.rate_n_mm, spring.preload_n) if spring else None,
     )
 
 

@@ -19,14 +19,14 @@ class Model(NamedTuple):
     """One stack, m groups on n radii with q points between them. SI units.
 
     The unknowns are the deflections, group after group: group g owns ``start[g]:start[g + 1]``,
-    at the radii ``0:count[g]`` (a ring shim owns none).
+    at the radii ``0:held[g]`` (a ring shim owns none).
     """
 
     clamp: float
     poisson: float
     groups: Floats  # (m, 6), see layout.group_shims
     radii: Floats  # (n,) m
-    count: Ints  # (m,)
+    held: Ints  # (m,)
     start: Ints  # (m + 1,)
     bending: Floats  # (m, n, n) N/m
     stretching: Floats  # (m,) E t, N/m

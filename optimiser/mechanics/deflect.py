@@ -156,7 +156,9 @@ def _faults(
     if len(shims[0]) == 3 or not shims[0][0] > clamp:
         faults.append("the face shim must be a plain shim wider than the clamp")
     if not 0 < inner < outer or outer <= clamp:
-        faults.append("the port ring needs 0 < port_inner_mm < port_outer_mm and must pass the clamp")
+        faults.append(
+            "the port ring needs 0 < port_inner_mm < port_outer_mm and must pass the clamp"
+        )
     if pressures.ndim != 1 or not pressures.size or not np.all(np.isfinite(pressures)):
         faults.append("pressures_mpa must be a list of finite numbers")
     elif np.any(pressures < 0):
@@ -232,16 +234,14 @@ def _fine(question: _Pressed, groups: Floats, ladder: Floats, stretched: bool) -
         raise ArithmeticError(
             f"no equilibrium at {ladder[steps < 0][0]:g} Pa after the allowed Newton steps"
         )
-    moments = np.stack(
-        [bending_moments(model, lifts[p], ladder[p]) for p in range(ladder.size)]
-    )
+    moments = np.stack([bending_moments(model, lifts[p], ladder[p]) for p in range(ladder.size)])
     pulls = np.zeros_like(moments)
     if stretched:
         pulls = np.stack([membrane_forces(model, lift) for lift in lifts])
     rest = question.seat if question.seat > 0.0 else min(question.port[1], question.outer[0])
     seat_rise = lifts[:, nearest(model.radii, rest)] - question.seat_height
     radii = np.concatenate([[question.clamp], model.radii])
-    return _Profiles(lifts[:, model.count[0] - 1], seat_rise, radii, moments, pulls)
+    return _Profiles(lifts[:, model.held[0] - 1], seat_rise, radii, moments, pulls)
 
 
 def _quick(question: _Pressed, groups: Floats, ladder: Floats) -> _Profiles:

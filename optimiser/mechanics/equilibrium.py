@@ -70,8 +70,8 @@ def scratch(model: Model) -> Work:
 def _bend(model: Model, shape: Floats, work: Work) -> float:
     """Bending energy; sets the gradient and the group blocks of the Hessian."""
     energy = 0.0
-    for g in range(model.count.size):
-        s, k = model.start[g], model.count[g]
+    for g in range(model.held.size):
+        s, k = model.start[g], model.held[g]
         for i in range(k):
             total = 0.0
             for j in range(k):
@@ -87,7 +87,7 @@ def _bend(model: Model, shape: Floats, work: Work) -> float:
 @step
 def _stretch(model: Model, shape: Floats, work: Work, g: int) -> float:
     """Membrane energy of one group; adds to the gradient and the Hessian."""
-    s, k = model.start[g], model.count[g]
+    s, k = model.start[g], model.held[g]
     points = 2 * k
     inner, outer = model.inner, model.outer[g]
     theta, force = work.theta[g], work.force[g]
@@ -137,7 +137,7 @@ def _press(model: Model, shape: Floats, work: Work, pressure: float, tight: floa
     """
     gradient, hessian = work.gradient, work.hessian
     energy = 0.0
-    for k in range(model.count[0]):
+    for k in range(model.held[0]):
         gradient[k] -= pressure * model.load[k]
         energy -= pressure * model.load[k] * shape[k]
     for c in range(model.front.size):
@@ -176,8 +176,8 @@ def evaluate(
     work.reach[:] = work.widest
     energy = _bend(model, shape, work)
     if stretched:
-        for g in range(model.count.size):
-            if model.count[g] > 0:
+        for g in range(model.held.size):
+            if model.held[g] > 0:
                 energy += _stretch(model, shape, work, g)
     return energy + _press(model, shape, work, pressure, tight)
 
@@ -281,10 +281,10 @@ def contact_forces(model: Model, shape: Floats) -> tuple[Floats, Floats]:
 @kernel
 def bending_moments(model: Model, shape: Floats, pressure: float) -> Floats:
     """Radial moment per length, N, of every group at the clamp and at every radius (m, n + 1)."""
-    m, n = model.count.size, model.radii.size
+    m, n = model.held.size, model.radii.size
     moments = np.zeros((m, n + 1))
     for g in range(m):
-        s, k = model.start[g], model.count[g]
+        s, k = model.start[g], model.held[g]
         edge = model.groups[g, 0]
         for i in range(k + 1):
             r = model.clamp if i == 0 else model.radii[i - 1]
@@ -308,10 +308,10 @@ def bending_moments(model: Model, shape: Floats, pressure: float) -> Floats:
 @kernel
 def membrane_forces(model: Model, shape: Floats) -> Floats:
     """Radial membrane force per length, N/m, of every group at the clamp and radii (m, n + 1)."""
-    m, n = model.count.size, model.radii.size
+    m, n = model.held.size, model.radii.size
     result = np.zeros((m, n + 1))
     for g in range(m):
-        s, k = model.start[g], model.count[g]
+        s, k = model.start[g], model.held[g]
         theta = np.dot(model.slope[g, : 2 * k, :k].copy(), shape[s : s + k])
         for i in range(k + 1):
             r = model.clamp if i == 0 else model.radii[i - 1]

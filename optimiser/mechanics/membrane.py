@@ -12,7 +12,6 @@ Source: S. Timoshenko and S. Woinowsky-Krieger, *Theory of Plates and Shells*, 2
 art. 100 (large deflections of circular plates).
 """
 
-
 from optimiser.compiled import kernel
 from optimiser.mechanics.layout import Floats
 

@@ -19,8 +19,10 @@ from optimiser.compiled import kernel
 @kernel
 def _shear_integral(r: float, s: float, clamp: float) -> float:
     """Integral of x ln(x/s) from the clamp to r."""
-    return 0.5 * r * r * log(r / s) - 0.25 * r * r - (
-        0.5 * clamp * clamp * log(clamp / s) - 0.25 * clamp * clamp
+    return (
+        0.5 * r * r * log(r / s)
+        - 0.25 * r * r
+        - (0.5 * clamp * clamp * log(clamp / s) - 0.25 * clamp * clamp)
     )
 
 
@@ -42,8 +44,8 @@ def ring_slope(r: float, s: float, clamp: float, edge: float, poisson: float) ->
         return 0.0
     outside = _edge_constant(s, clamp, edge, poisson)
     inner = min(r, s)
-    return (
-        0.5 * outside * (r - clamp * clamp / r) - _shear_integral(inner, s, clamp) / (2.0 * pi * r)
+    return 0.5 * outside * (r - clamp * clamp / r) - _shear_integral(inner, s, clamp) / (
+        2.0 * pi * r
     )
 
 

@@ -563,8 +563,8 @@ def _seat_rise(tables: Tables, b: Bench, height: float) -> float:
     """Rise of the face shim above the seat, m."""
     for u in range(b.reach[0]):
         if b.used[u] == tables.seat:
-            return b.lift[0, u] - height
-    return b.lift[0, b.reach[0] - 1] - height
+            return float(b.lift[0, u]) - height
+    return float(b.lift[0, b.reach[0] - 1]) - height
 
 
 @kernel
@@ -592,7 +592,6 @@ def follow(
     return total
 
 
-
 class Profile(NamedTuple):
     """A settled stack in full, at the clamp and every table node (k = n + 1, clamp first)."""
 
@@ -601,9 +600,7 @@ class Profile(NamedTuple):
     pull: Floats  # (m, k) radial membrane force per length, N/m
 
 
-def profile(
-    tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float
-) -> Profile:
+def profile(tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float) -> Profile:
     """Deflection, moment and membrane force of every group as settled at ``pressure``, Pa; zeros
     at radii that do not matter for the stack."""
     shape = (layers.plate.size, tables.nodes.size + 1)

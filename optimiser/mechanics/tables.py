@@ -94,9 +94,7 @@ def _membrane_row(
 
 
 @step
-def _stiffening(
-    theta: Floats, weight: Floats, membrane: Floats, lift: float, work: float
-) -> float:
+def _stiffening(theta: Floats, weight: Floats, membrane: Floats, lift: float, work: float) -> float:
     """Membrane over bending secant stiffness of a shape, per (E t / D) and squared edge lift."""
     energy = 0.0
     for q in range(theta.size):

@@ -36,9 +36,9 @@ class Settings:
 
     evaluations: int = 60_000
     population: int = 200
-    generations: int = 120
+    generations: int = 100
     patience: int = 30
-    generations_share: float = 0.35
+    generations_share: float = 0.5
     enumerate_up_to: int = 50_000
     rise_max: float = 2.0
     effort: Effort = field(default_factory=Effort)

@@ -10,8 +10,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from optimiser.search.counts import NONE, Counts, Plans
-from optimiser.search.space import Mask, Space
 from optimiser.search.sizes import Floats, Ints
+from optimiser.search.space import Mask, Space
 
 _BATCH = 1024
 

@@ -11,6 +11,7 @@ from optimiser.hydraulics.lift import pressure_grid
 from optimiser.hydraulics.valve import ValveNumbers, bleed_settings, drops_at, valve_numbers
 from optimiser.mechanics.layout import Floats, Ints
 from optimiser.mechanics.quick import Bench, Layers, Setting, bench, follow
+from optimiser.mechanics.stress import fatigue_utilisation
 from optimiser.mechanics.tables import Tables, tables_for
 from optimiser.prediction import Setup, fixed_tables
 from optimiser.search.counts import Plans
@@ -60,7 +61,7 @@ class Desk(NamedTuple):
     drop: Floats
     shim_pressure: Floats
     lift_at: Floats
-    trial: Floats  # (n,) misfit of the click being tried
+    trial: Floats  # (n,) force over wanted force less 1 at the click being tried
 
 
 @inner
@@ -94,19 +95,19 @@ def _misfit(job: Job, desk: Desk, click: int) -> float:
     total = 0.0
     for n in range(job.flows.size):
         force = job.fixed[n] + job.numbers.area_m2 * desk.drop[n]
-        value = min(force / job.wanted[n] - 1.0, HOPELESS) * job.weight[n]
+        value = min(force / job.wanted[n] - 1.0, HOPELESS)
         desk.trial[n] = value
-        total += value * value
+        total += (value * job.weight[n]) ** 2
     return float(np.sqrt(total))
 
 
 @inner
-def _best_click(job: Job, desk: Desk, misfit: Floats) -> tuple[int, float]:
+def _best_click(job: Job, desk: Desk, relative: Floats) -> tuple[int, float]:
     """Click with the least error, by steps that halve from the middle of the range."""
     count = job.bleed_a.size
     best = count // 2
     error = _misfit(job, desk, best)
-    misfit[:] = desk.trial
+    relative[:] = desk.trial
     stride = max(1, (count + 1) // 4)
     while count > 1:
         moved = False
@@ -115,7 +116,7 @@ def _best_click(job: Job, desk: Desk, misfit: Floats) -> tuple[int, float]:
                 value = _misfit(job, desk, trial)
                 if value < error:
                     best, error, moved = trial, value, True
-                    misfit[:] = desk.trial
+                    relative[:] = desk.trial
                     break
         if not moved:
             if stride == 1:
@@ -131,9 +132,10 @@ def _at(table: Floats, pressures: Floats, pressure: float) -> float:
     while k < pressures.size - 2 and pressures[k + 1] < pressure:
         k += 1
     if pressure < pressures[0]:
-        return table[0] * pressure / pressures[0]
-    share = (pressure - pressures[k]) / (pressures[k + 1] - pressures[k])
-    return table[k] + share * (table[k + 1] - table[k])
+        return float(table[0]) * pressure / float(pressures[0])
+    low, high = float(table[k]), float(table[k + 1])
+    share = (pressure - float(pressures[k])) / float(pressures[k + 1] - pressures[k])
+    return low + share * (high - low)
 
 
 @inner
@@ -160,12 +162,12 @@ def _with_opening(job: Job, force: Floats, desk: Desk) -> None:
 @kernel
 def score(
     plans: Plans, shelf: Shelf, tables: Tables, setting: Setting, job: Job,
-    b: Bench, desk: Desk, force: Floats, results: Floats, misfits: Floats,
+    b: Bench, desk: Desk, force: Floats, results: Floats, relative: Floats,
 ) -> None:  # fmt: skip
     """Score (plans, width) rows that share one clamp diameter.
 
     Writes ``results`` (plans, 4): error, largest stress Pa, click, edge rise over the face shim's
-    thickness; and ``misfits`` (plans, n).
+    thickness; and ``relative`` (plans, n): force over wanted force less 1.
     """
     loaded = job.pressures * job.numbers.loaded_fraction
     for row in range(plans.shape[0]):
@@ -180,10 +182,10 @@ def score(
         )
         if rounds < 0:
             results[row, :] = HOPELESS
-            misfits[row, :] = HOPELESS * job.weight
+            relative[row, :] = HOPELESS
             continue
         _with_opening(job, force, desk)
-        click, error = _best_click(job, desk, misfits[row])
+        click, error = _best_click(job, desk, relative[row])
         _misfit(job, desk, click)
         top = 0.0
         for n in range(job.flows.size):
@@ -218,8 +220,7 @@ class ModelEvaluator:
         self.click_range = click_range or middle_clicks(setup)
         self._job = make_job(setup, target, self.click_range)
         self._clamped = {
-            int(number): self._tables_of(int(number))
-            for number in np.flatnonzero(space.may_clamp)
+            int(number): self._tables_of(int(number)) for number in np.flatnonzero(space.may_clamp)
         }
 
     def with_target(self, target: Target) -> "ModelEvaluator":
@@ -228,20 +229,29 @@ class ModelEvaluator:
 
     def evaluate(self, plans: Plans) -> Scores:
         """Scores of (plans, width) rows; independent of each other and of their order."""
+        results, relative = self._judge(plans)
+        steel = self.setup.steel
+        used = fatigue_utilisation(1e-6 * results[:, 1], steel.endurance_mpa, steel.tensile_mpa)
+        misfit = relative * self._job.weight
+        return Scores(results[:, 0], used, results[:, 2], results[:, 3], misfit)
+
+    def forces(self, plans: Plans) -> Floats:
+        """Force, N, (plans, points) of each plan at its best click."""
+        return np.asarray(self._job.wanted * (1.0 + self._judge(plans)[1]))
+
+    def _judge(self, plans: Plans) -> tuple[Floats, Floats]:
+        """``results`` and ``relative`` of :func:`score`, in the order of the plans."""
         count, points = len(plans), self._job.flows.size
-        results, misfits = np.zeros((count, 4)), np.zeros((count, points))
+        results, relative = np.zeros((count, 4)), np.zeros((count, points))
         clamp = self.space.diameter[plans[:, -1].astype(np.int64) - 1]
         for number in np.unique(clamp):
             rows = np.flatnonzero(clamp == number)
-            part, part_misfits = np.zeros((rows.size, 4)), np.zeros((rows.size, points))
-            self._score(self._clamped[int(number)], plans[rows], part, part_misfits)
-            results[rows], misfits[rows] = part, part_misfits
-        steel = self.setup.steel
-        half = 0.5e-6 * results[:, 1]
-        used = half / steel.endurance_mpa + half / steel.tensile_mpa
-        return Scores(results[:, 0], used, results[:, 2], results[:, 3], misfits)
+            part, part_relative = np.zeros((rows.size, 4)), np.zeros((rows.size, points))
+            self._score(self._clamped[int(number)], plans[rows], part, part_relative)
+            results[rows], relative[rows] = part, part_relative
+        return results, relative
 
-    def _score(self, at: _Clamped, plans: Plans, results: Floats, misfits: Floats) -> None:
+    def _score(self, at: _Clamped, plans: Plans, results: Floats, relative: Floats) -> None:
         entries, points = self._job.pressures.size, self._job.flows.size
         groups = plans.shape[1]
         empty = [np.zeros(groups, np.int64) for _ in range(3)]
@@ -253,7 +263,7 @@ class ModelEvaluator:
         )
         score(
             np.ascontiguousarray(plans), at.shelf, at.tables, self._setting(), self._job,
-            bench(groups, at.tables.nodes.size), desk, np.zeros(entries), results, misfits,
+            bench(groups, at.tables.nodes.size), desk, np.zeros(entries), results, relative,
         )  # fmt: skip
 
     def _setting(self) -> Setting:

@@ -22,10 +22,9 @@ def limits_of(setup: Setup, space: Space, target: Target) -> Limits:
     The parts' own limits are exact; the stock's are the extremes of single-shim stacks, of
     stacks as thick as the rules allow, and of a seeded sample (quick model).
     """
-    even = Target.of(target.velocity_m_s, target.force_n, direction=target.direction)
     plans = _extreme_plans(space)
-    softest = _forces(setup, space, even, plans, setup.clicks_range).min(axis=0)
-    firmest = _forces(setup, space, even, plans, 0).max(axis=0)
+    softest = _forces(setup, space, target, plans, setup.clicks_range).min(axis=0)
+    firmest = _forces(setup, space, target, plans, 0).max(axis=0)
     oil, velocity = setup.oil_state, target.velocity_m_s
     fixed = fixed_tables(setup, float(velocity[-1]))
     ends = [
@@ -38,18 +37,14 @@ def limits_of(setup: Setup, space: Space, target: Target) -> Limits:
         np.minimum(ends[1][1], 1e9),
         softest,
         firmest,
-        make_job(setup, even, (0, 0)).fixed,
+        make_job(setup, target, (0, 0)).fixed,
         preloaded=seat is not None and seat.height_mm > 0.0,
     )
 
 
-def _forces(
-    setup: Setup, space: Space, target: Target, plans: Plans, clicks: int
-) -> Floats:
+def _forces(setup: Setup, space: Space, target: Target, plans: Plans, clicks: int) -> Floats:
     """(plans, points) force, N, at one click setting."""
-    scores = ModelEvaluator(setup, space, target, (clicks, clicks)).evaluate(plans)
-    share = np.sqrt(1.0 / len(target))
-    return target.force_n * (1.0 + scores.misfit / share)
+    return ModelEvaluator(setup, space, target, (clicks, clicks)).forces(plans)
 
 
 def _extreme_plans(space: Space) -> Plans:
@@ -72,7 +67,7 @@ def _single_shims(space: Space) -> Counts:
 
 def _thickest(space: Space) -> Counts:
     """As many of the thickest wide shims as parts and height allow, over each clamp shim."""
-    rules, sizes = space.rules, space.sizes
+    sizes = space.sizes
     faces = np.flatnonzero(space.may_face)
     rows = []
     for face in faces:
@@ -83,7 +78,6 @@ def _thickest(space: Space) -> Counts:
     pieces[:, 0] = np.stack(rows)
     clamp = np.repeat(space.clamp_sizes, len(rows))
     pieces = np.tile(pieces, (len(space.clamp_sizes), 1, 1))
-    assert rules.parts >= 2
     return Counts(pieces, np.full(len(clamp), -1), clamp)
 
 

@@ -79,13 +79,13 @@ class Neighbours:
         opened = _with_pieces(counts, np.repeat(splits, len(size), axis=0))
         opened.crossover = np.tile(size, len(splits))
         outer = space.diameter[opened.crossover]
-        useful = (outer > space.widest(opened.pieces[:, 1])) & (outer < space.diameter[opened.clamp])
+        useful = (outer > space.widest(opened.pieces[:, 1])) & (
+            outer < space.diameter[opened.clamp]
+        )
         return [opened.pick(useful)]
 
     def _clamps(self, counts: Counts) -> Counts:
-        other = _with_pieces(
-            counts, np.repeat(counts.pieces, len(self.space.clamp_sizes), axis=0)
-        )
+        other = _with_pieces(counts, np.repeat(counts.pieces, len(self.space.clamp_sizes), axis=0))
         other.clamp = self.space.clamp_sizes.copy()
         return other
 

@@ -6,8 +6,8 @@ import numpy as np
 
 from optimiser.search.counts import NONE, Counts, Plans
 from optimiser.search.repair import Random, Repair
-from optimiser.search.sizes import Ints
-from optimiser.search.space import Space
+from optimiser.search.sizes import Floats, Ints
+from optimiser.search.space import Mask, Space
 from optimiser.search.steps import Steps
 
 TWO_STAGE_SHARE = 0.5
@@ -48,19 +48,20 @@ def _empty(space: Space, count: int) -> Counts:
     return Counts(pieces, none, none.copy())
 
 
-def _spread(count: int, rng: Random) -> np.ndarray[tuple[int], np.dtype[np.float64]]:
+def _spread(count: int, rng: Random) -> Floats:
     """Evenly spread numbers in 0..1 in random order."""
     return np.asarray(rng.permutation((np.arange(count) + rng.random(count)) / max(count, 1)))
 
 
-def _draw_weighted(weight: np.ndarray, draws: int, rng: Random) -> Ints:  # type: ignore[type-arg]
+def _draw_weighted(weight: Floats | Ints | Mask, draws: int, rng: Random) -> Ints:
     cumulative = np.cumsum(weight, axis=1, dtype=float)
     mark = rng.random((len(weight), draws)) * cumulative[:, -1:]
     found = (cumulative[:, None, :] <= mark[:, :, None]).sum(axis=2)
-    return np.minimum(found, weight.shape[1] - 1).astype(np.int64)
+    last: Ints = np.minimum(found, weight.shape[1] - 1)
+    return last
 
 
-def _lay(pieces: Ints, weight: np.ndarray, number: np.ndarray, rng: Random) -> None:  # type: ignore[type-arg]
+def _lay(pieces: Ints, weight: Floats | Mask, number: Floats, rng: Random) -> None:
     draws = int(np.max(number, initial=1))
     drawn = _draw_weighted(weight, max(draws, 1), rng)
     wanted = np.arange(drawn.shape[1]) < np.floor(number)[:, None]

@@ -1,8 +1,10 @@
 """The local pass: change the best stacks shim by shim until no single change helps.
 
-First the champions (the lowest error for each number of parts) are improved by all single
-changes, then the rest of the front, then the champions by a sample of double changes; every
-gain starts the sequence anew. A stack's neighbourhood is looked at once.
+Champions come first: the least error for each number of parts, then for each family (diameters of
+face, clamp and crossover). All their single changes are tried, then the combinations of two to
+four changes that look best when the changes' effects on the curve are added up. After that the
+rest of the front and random double changes of the champions take turns; every gain starts the
+sequence anew. A stack's neighbourhood is looked at once.
 """
 
 from dataclasses import dataclass
@@ -22,7 +24,7 @@ _BEAM = 200  # combinations of changes kept for each number of changes
 _LOOKED_AT = 100  # front members compared when the next one to explore is chosen
 
 
-Move = Literal["single", "paired", "random"]
+Move = Literal["single", "combined", "random"]
 Work = tuple[int, Move]
 
 
@@ -30,21 +32,25 @@ Work = tuple[int, Move]
 class Effort:
     """How hard the local pass tries.
 
-    Single changes are tried in batches of at least ``batch``, promising pairs in batches of
-    ``paired``; ``random`` double changes a round and ``random_rounds`` rounds for each champion;
-    the neighbourhoods of ``runners_up`` further stacks at the end. Champions with more than
-    ``keen`` times the least error (plus one percentage point) are left alone.
+    Single changes are tried in batches of at least ``batch``. Of the combinations of 2, 3 ...
+    changes (up to ``depth`` more than one) ``combined`` each are tried at a time, for at most
+    ``combined_rounds`` times a stack, if their hoped-for error is below ``hope`` times the
+    stack's; not for errors below ``enough`` (a fraction), which no damper would show.
+    ``random`` double changes a round and ``random_rounds`` rounds for each champion; at the end
+    the neighbourhoods of ``runners_up`` further stacks. Champions with more than ``keen`` times
+    the least error (plus one percentage point) are left alone.
     """
 
     batch: int = 48
-    paired: int = 20
-    paired_rounds: int = 3
+    combined: int = 20
+    combined_rounds: int = 3
     depth: int = 3
     hope: float = 1.3
     random: int = 100
     random_rounds: int = 6
     runners_up: int = 100
     keen: float = 3.0
+    families: int = 20
     enough: float = 0.0005
 
 
@@ -60,10 +66,10 @@ class Polish:
         self.effort = effort or Effort()
         self.neighbours = Neighbours(archive.space)
         self._singled: set[int] = set()
-        self._paired: set[int] = set()
+        self._combined: set[int] = set()
         self._waiting: dict[int, Plans] = {}
         self._rounds: dict[int, int] = {}
-        self._pair_rounds: dict[int, int] = {}
+        self._combined_rounds: dict[int, int] = {}
         self._by_parts: dict[int, int] = {}
         self._by_family: dict[int, int] = {}
         self._front = np.zeros(0, dtype=np.int64)
@@ -96,18 +102,18 @@ class Polish:
                 self._waiting[row] = waiting[first:]
             else:
                 self._singled.add(row)
-        elif how == "paired":
-            plans = self._promising(row)
-            self._pair_rounds[row] = self._pair_rounds.get(row, 0) + 1
-            if len(plans) < effort.paired or self._pair_rounds[row] >= effort.paired_rounds:
-                self._paired.add(row)
+        elif how == "combined":
+            plans = self._hopeful(row)
+            self._combined_rounds[row] = self._combined_rounds.get(row, 0) + 1
+            if len(plans) < effort.combined or self._combined_rounds[row] >= effort.combined_rounds:
+                self._combined.add(row)
         else:
             self._rounds[row] = self._rounds.get(row, 0) + 1
             plans = self.archive.fresh(self.neighbours.double(plan, effort.random, self.rng))
         self.archive.rows(plans[: self.budget.left])
         self._notice()
 
-    def _promising(self, row: int) -> Plans:
+    def _hopeful(self, row: int) -> Plans:
         """Untried plans some changes away that should be good if the changes' effects add up.
 
         Known single changes are combined two at a time, the best of these with a third, and so
@@ -132,7 +138,7 @@ class Polish:
             beam, first = np.unique(beam, axis=0, return_index=True)
             reached = reached[first]
             order = np.argsort((reached**2).sum(axis=1), kind="stable")
-            found.append(archive.fresh(beam[order])[: effort.paired])
+            found.append(archive.fresh(beam[order])[: effort.combined])
         return archive.fresh(np.concatenate(found))
 
     def _notice(self) -> None:
@@ -154,14 +160,12 @@ class Polish:
         self._crown(self._by_family, new, self._family(new))
 
     def _family(self, rows: Ints) -> Ints:
-        """(rows,) number of the family: diameters of face, clamp and crossover (if any)."""
-        counts = self.archive.space.decode(self.archive.plans[rows])
+        """(rows,) number of the family: face diameter, clamp diameter and crossover size."""
         space = self.archive.space
-        diameters = len(space.outer_of)
-        face = space.widest(counts.pieces[:, 0])
-        crossover = np.where(counts.two_stage, space.diameter[counts.crossover], diameters)
-        clamp = space.diameter[counts.clamp]
-        return np.asarray((face * diameters + clamp) * (diameters + 1) + crossover)
+        counts = space.decode(self.archive.plans[rows])
+        face, clamp = space.widest(counts.pieces[:, 0]), space.diameter[counts.clamp]
+        family = (face * len(space.outer_of) + clamp) * (len(space.sizes) + 1)
+        return np.asarray(family + counts.crossover + 1)
 
     def _crown(self, champions: dict[int, int], rows: Ints, kinds: Ints) -> None:
         """Note the rows that are better in error than the champion of their kind."""
@@ -176,6 +180,7 @@ class Polish:
     def _next(self) -> Work | None:
         """The row to work on and how; None when all is done."""
         by_parts, by_family = self._keen(self._by_parts), self._keen(self._by_family)
+        by_family = by_family[: self.effort.families]
         work = self._systematic(by_parts) or self._systematic(by_family)
         if work:
             return work
@@ -193,8 +198,8 @@ class Polish:
         for row in rows:
             if row not in self._singled:
                 return row, "single"
-            if row not in self._paired and errors[row] > self.effort.enough:
-                return row, "paired"
+            if row not in self._combined and errors[row] > self.effort.enough:
+                return row, "combined"
         return None
 
     def _on_front(self) -> Work | None:

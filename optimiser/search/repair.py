@@ -209,4 +209,5 @@ class Repair:
 
 def _draw(allowed: Mask, rng: Random) -> Ints:
     """One random allowed column a row (0 where there is none)."""
-    return np.argmax(allowed * rng.random(allowed.shape), axis=1).astype(np.int64)
+    chosen: Ints = np.argmax(allowed * rng.random(allowed.shape), axis=1)
+    return chosen

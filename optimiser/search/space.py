@@ -176,12 +176,14 @@ class Space:
         """(plans,) diameter number of the narrowest bending shim, -1 for none."""
         present = np.where(counts.pieces.any(axis=1), self.diameter, NONE)
         crossed = np.where(counts.two_stage, self.diameter[counts.crossover], NONE)
-        return np.maximum(present.max(axis=1, initial=NONE), crossed)
+        narrowest: Ints = np.maximum(present.max(axis=1, initial=NONE), crossed)
+        return narrowest
 
     def widest(self, pieces: Ints) -> Ints:
         """(plans,) diameter number of the widest shim of one stage (plans, sizes)."""
         none = len(self.outer_of)
-        return np.where(pieces > 0, self.diameter, none).min(axis=1, initial=none)
+        widest: Ints = np.where(pieces > 0, self.diameter, none).min(axis=1, initial=none)
+        return widest
 
     def face_pieces(self, counts: Counts) -> Ints:
         """(plans,) first-stage shims of the face shim's diameter."""
@@ -199,7 +201,7 @@ class Space:
 
     def buildable(self, plans: Plans) -> Mask:
         """(plans,) whether a row keeps every rule."""
-        return ~self.violations(plans).any(axis=1)
+        return np.asarray(~self.violations(plans).any(axis=1))
 
     def broken(self, counts: Counts) -> Mask:
         """(plans, rules) which of ``BROKEN_RULES`` counts break."""
@@ -242,7 +244,7 @@ class Space:
         return self._used(counts, self._clamp_pieces(counts)[0])
 
     def _used(self, counts: Counts, clamp_pieces: Ints) -> Ints:
-        used = counts.pieces.sum(axis=1)
+        used: Ints = counts.pieces.sum(axis=1)
         crossed = np.flatnonzero(counts.two_stage)
         used[crossed, counts.crossover[crossed]] += 1
         clamped = np.flatnonzero(counts.clamp >= 0)
@@ -252,12 +254,14 @@ class Space:
     def parts(self, plans: Plans) -> Ints:
         """(plans,) number of shims, all clamp shims included."""
         counts = self.decode(plans)
-        return self.bending(counts)[0] + self._clamp_pieces(counts)[0]
+        parts: Ints = self.bending(counts)[0] + self._clamp_pieces(counts)[0]
+        return parts
 
     def changed(self, plans: Plans) -> Ints:
         """(plans,) shims to add plus shims to remove, starting from the fitted stack."""
         used = self.used(self.decode(plans))
-        return np.abs(used - self.fitted_counts).sum(axis=1) + self.fitted_elsewhere
+        moved: Ints = np.abs(used - self.fitted_counts).sum(axis=1)
+        return moved + self.fitted_elsewhere
 
     def shims(self, plan: Plans) -> list[int]:
         """Size indices of one plan, face first, every clamp shim included."""
@@ -309,4 +313,5 @@ class Space:
         np.add.at(pieces[0, 0], sizes[:crossing], 1)
         np.add.at(pieces[0, 1], sizes[crossing + 1 :], 1)
         crossover = sizes[crossing] if len(rises) else NONE
-        return self.encode(Counts(pieces, np.array([crossover]), np.array([clamp])))[0]
+        plans = self.encode(Counts(pieces, np.array([crossover]), np.array([clamp])))
+        return np.asarray(plans[0])

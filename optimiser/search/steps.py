@@ -34,9 +34,7 @@ class Steps:
         return np.stack([self.thicker, self.thinner, self.wider, self.narrower])
 
 
-def _next_size(
-    outer: Ints, thick: Floats, relation: Callable[[Ints, Floats], Mask]
-) -> Ints:
+def _next_size(outer: Ints, thick: Floats, relation: Callable[[Ints, Floats], Mask]) -> Ints:
     apart = outer[None, :] - outer[:, None]
     more = thick[None, :] - thick[:, None]
     distance = np.where(relation(apart, more), np.abs(more), np.inf)

@@ -21,7 +21,9 @@ class Apart(NamedTuple):
     stress: float  # of the stack's peak, per its largest one
 
 
-def apart(question: Question, found: Deflection, reference: ReferenceDeflection) -> Apart:
+def apart(
+    question: Question, found: Deflection, reference: Deflection | ReferenceDeflection
+) -> Apart:
     """Compare two answers at the same pressures."""
     thickness = question.shims[0][1]
     rise = reference.edge_deflection_mm

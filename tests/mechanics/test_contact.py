@@ -68,7 +68,7 @@ def test_forces_balance_at_every_radius(seed: int, kind: str, stretched: bool) -
         model, shape = solved.model, solved.shapes[p]
         inside = [
             np.abs(model.bending[g, :k, :k]) @ np.abs(shape[model.start[g] : model.start[g] + k])
-            for g, k in enumerate(model.count)
+            for g, k in enumerate(model.held)
         ]
         assert np.max(np.abs(solved.residual(p))) < 1e-6 * np.max(np.concatenate(inside))
 

@@ -28,7 +28,7 @@ def _errors(
     rises = []
     for count in pieces:
         solved = fine(question, np.array([pressure]), stretched=True, pieces=count)
-        rises.append(1e3 * solved.shapes[0, solved.model.count[0] - 1])
+        rises.append(1e3 * solved.shapes[0, solved.model.held[0] - 1])
     return np.abs(np.array(rises) / exact.edge_deflection_mm - 1)
 
 

@@ -68,7 +68,7 @@ def test_search_is_usually_much_closer() -> None:
         }  # fmt: skip
         quick = deflect(question.shims, fidelity="search", **options)
         fine = deflect(question.shims, fidelity="reported", **options)
-        found.append(apart(question, quick, fine))  # type: ignore[arg-type]  # same columns
+        found.append(apart(question, quick, fine))
     lift, _, stress = np.median(np.array(found), axis=0)
     assert lift < 0.008
     assert stress < 0.008
