@@ -10,18 +10,19 @@ every stack held against it, and cancels: the change comes out right, though the
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
+from typing import TypeVar
 
 import numpy as np
 
+from optimiser.copy_files import read_copy
 from optimiser.damper import Direction
 from optimiser.faults import BadInput
-from optimiser.files import Kind, find_data, read_table
+from optimiser.files import Kind
 from optimiser.hydraulics.gas import gas_force_n
 from optimiser.prediction import Prediction, Setup, predict
 from optimiser.stack import Stack
 from optimiser.wanted.change import changed
 from optimiser.wanted.derive import Derived, derive, stroke_notes
-from optimiser.wanted.dyno_copy import copied
 from optimiser.wanted.feel import Feel
 from optimiser.wanted.frame import Frame
 from optimiser.wanted.rebound_rule import rebound_notes
@@ -44,20 +45,25 @@ CHANGE_VELOCITIES: dict[Direction, tuple[float, ...]] = {
 }
 #: The damper that the bundled example targets are made for.
 EXAMPLE_DAMPER = "rear-monotube"
-FASTEST_M_S = 20.0
+USUAL_FEEL = "balanced"
 
 Stacks = Mapping[Direction, Stack]
 Files = tuple[tuple[Kind, str], ...]
 ReadTarget = Callable[[str, Direction], Target]
+Record = TypeVar("Record", Rider, Frame, Feel)
 
 
 @dataclass(frozen=True)
 class RideWish:
-    """Rider, frame and feel, what follows from them, and what the targets would do on the road."""
+    """Rider, frame and feel, what follows from them, and what the targets would do on the road.
+
+    ``usual_feel`` is the bundled one to start from, which the feel can be held against.
+    """
 
     rider: Rider
     frame: Frame
     feel: Feel
+    usual_feel: Feel
     derived: Derived
     vehicle: QuarterVehicle
     corner: Corner
@@ -137,9 +143,7 @@ def _of_copy(said: Said, setups: Sequence[Setup], _stacks: Stacks) -> Wished:
     return _of_files("copy", names, read, setups)
 
 
-def _of_files(
-    way: Way, names: Sequence[str], read: ReadTarget, setups: Sequence[Setup]
-) -> Wished:
+def _of_files(way: Way, names: Sequence[str], read: ReadTarget, setups: Sequence[Setup]) -> Wished:
     faults: list[str] = []
     targets: list[Target] = []
     for name, setup in zip(names, setups, strict=True):
@@ -166,13 +170,6 @@ def _of_change(said: Said, setups: Sequence[Setup], stacks: Stacks) -> Wished:
         if velocity.size < 2:
             raise BadInput("--velocities holds one velocity only; allowed: two or more")
         seen = predict(setup, fitted_stack(setup, stacks), velocity, said.clicks)
-        if not np.all(np.isfinite(seen.force_n)):
-            first = velocity[np.isfinite(seen.force_n)]
-            raise BadInput(
-                f"the fitted {setup.direction} stack lets no oil through below "
-                f"{first.min() if first.size else velocity.max():g} m/s, which cannot be changed by "
-                "a share; allowed: --velocities above it, or more --clicks"
-            )
         target = _changed(said, seen)
         notes = [f"fitted stack: {warning}" for warning in seen.warnings]
         targets.append(replace(target, notes=(*target.notes, *notes)))
@@ -212,70 +209,30 @@ def _of_ride(said: Said, setups: Sequence[Setup], _stacks: Stacks) -> Wished:
         tuple(derived.target(setup.direction) for setup in setups),
         (*derived.notes, *stroke_notes(frame, damper.body.stroke_mm)),
         tuple((kind, name) for kind, name in named if name is not None),
-        RideWish(rider, frame, feel, derived, vehicle, corner(vehicle, force)),
+        RideWish(
+            rider, frame, feel, read_feel(USUAL_FEEL), derived, vehicle, corner(vehicle, force)
+        ),
     )
 
 
 def _read_ride(said: Said) -> tuple[Rider, Frame, Feel]:
-    """The three files (or two, and a mass). Raises BadInput with the faults of all."""
+    """Rider, frame and feel. Raises BadInput with the faults of all three files."""
     faults: list[str] = []
-    rider = Rider(mass_kg=said.rider_kg) if said.rider_kg is not None else None
-    frame = feel = None
-    try:
-        rider = rider or read_rider(said.rider or "")
-    except BadInput as error:
-        faults += error.faults
-    try:
-        frame = read_frame(said.frame or "")
-    except BadInput as error:
-        faults += error.faults
-    try:
-        feel = read_feel(said.feel or "")
-    except BadInput as error:
-        faults += error.faults
+    if said.rider_kg is None:
+        rider = _tried(read_rider, said.rider, faults)
+    else:
+        rider = Rider(mass_kg=said.rider_kg)
+    frame = _tried(read_frame, said.frame, faults)
+    feel = _tried(read_feel, said.feel, faults)
     if rider is None or frame is None or feel is None:
         raise BadInput(faults)
     return rider, frame, feel
 
 
-def read_copy(name: str, direction: Direction, static_n: float, alone: bool = True) -> Target:
-    """Target of one direction from a measured table: ``velocity_m_s,force_n[,direction]``.
-
-    Rows in any order, repeats allowed. With a ``direction`` column the file may hold both
-    strokes; without one it holds one, and is ``alone``. ``static_n``, N, is taken off every
-    force. Raises BadInput.
-    """
-    path = find_data("target", name)
-    faults: list[str] = []
-    table = read_table(
-        path, ["velocity_m_s", "force_n"], ["weight"], texts=["direction"], collect=faults
-    )
-    velocity, force = table.numbers["velocity_m_s"], table.numbers["force_n"]
-    words = [table.text("direction", row) for row in range(len(table.lines))]
-    if "direction" not in table.texts and not alone:
-        faults.append(f'{path}: has no column "direction"; allowed: one --copy file a direction')
-    for row, word in enumerate(words):
-        if word not in (None, "compression", "rebound"):
-            faults.append(
-                f'{table.where(row)}: direction "{word}" is not known; allowed: compression, rebound'
-            )
-        for what, value, most in (("velocity_m_s", velocity, FASTEST_M_S), ("force_n", force, 1e5)):
-            if not 0.0 < value[row] <= most:
-                faults.append(
-                    f"{table.where(row)}: {what} {value[row]:g}; allowed: above 0 up to {most:g}"
-                )
-    chosen = [row for row, word in enumerate(words) if word in (None, direction)]
-    if not faults and not chosen:
-        faults.append(f"{path}: holds no {direction} row; allowed: one or more")
-    if faults:
-        raise BadInput(faults)
+def _tried(read: Callable[[str], Record], name: str | None, faults: list[str]) -> Record | None:
+    """What ``read`` returns, or None with its faults added."""
     try:
-        return copied(
-            velocity[chosen],
-            force[chosen],
-            direction=direction,
-            static_force_n=static_n,
-            origin=f"copy of {name}",
-        )
+        return read(name or "")
     except BadInput as error:
-        raise BadInput(f"{path}: {direction}: {fault}" for fault in error.faults) from None
+        faults += error.faults
+        return None

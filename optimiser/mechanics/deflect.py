@@ -113,8 +113,12 @@ def deflect(
         faults.append(
             f"seat_mm is {seat_mm:g}; it must lie between the clamp and the face shim's edge"
         )
-    if not (youngs_mpa > 0.0 and 0.0 <= poisson < 0.5):
-        faults.append("youngs_mpa must be above 0 and poisson from 0 to below 0.5")
+    if not np.isfinite(seat_height_mm):
+        faults.append(f"seat_height_mm is {seat_height_mm}; it must be a finite number")
+    if not (0.0 < youngs_mpa < np.inf and 0.0 <= poisson < 0.5):
+        faults.append("youngs_mpa must be finite and above 0, poisson from 0 to below 0.5")
+    if back_spring is not None:
+        faults += _spring_faults(back_spring, clamp_mm)
     if faults:
         raise BadInput(faults)
     question = _Pressed(
@@ -130,6 +134,17 @@ def deflect(
         poisson,
     )
     return _answer(question, pressures * 1e6, fidelity)
+
+
+def _spring_faults(spring: BackSpringForce, clamp_mm: float) -> list[str]:
+    if not np.all(np.isfinite(spring)):
+        return ["the back spring's ring, rate and preload must be finite numbers"]
+    faults = []
+    if spring.ring_mm <= clamp_mm:
+        faults.append(f"the back spring's ring must be wider than the clamp, {clamp_mm:g} mm")
+    if spring.rate_n_mm < 0.0 or spring.preload_n < 0.0:
+        faults.append("the back spring's rate and preload must be 0 or more")
+    return faults
 
 
 def _spring(spring: BackSpringForce | None) -> tuple[float, float, float]:
@@ -189,10 +204,11 @@ def _answer(question: _Pressed, pressures: Floats, fidelity: Fidelity) -> Deflec
         found = _fine(question, groups, ladder, fidelity == "reported")
     clamp_moments, stress, places = _per_shim(question, groups, member, found)
     rise = found.edge[pick] / question.thickness[0]
+    open_by = np.where(found.seat[pick] > 1e-12 * question.outer[0], found.seat[pick], 0.0)
     return Deflection(
         pressures * 1e-6,
         found.edge[pick] * 1e3,
-        np.maximum(0.0, found.seat[pick]) * 1e3,
+        open_by * 1e3,
         clamp_moments[pick],
         stress[pick] * 1e-6,
         places[pick] * 2e3,

@@ -30,7 +30,10 @@ from optimiser.mechanics.tables import POINTS, Tables
 #: Added stiffness per membrane secant stiffness; between 1 and 3 both lift and shape settle fast.
 RELAXATION = 1.6
 MOST_ROUNDS = 60
-MOST_PIVOTS = 80
+#: From this round on the shapes of two rounds are averaged: a contact may otherwise close and open
+#: in turn for ever.
+AVERAGED_FROM = 9
+MOST_PIVOTS = 1000
 #: Relative overlap or pull that passes for none.
 SLACK = 1e-9
 RING, SPACER = -1, -2
@@ -108,6 +111,8 @@ class Bench(NamedTuple):
     bent: Floats  # (m, n) moments
     last_lift: Floats  # (m, n) at the last pressure
     last_theta: Floats  # (m, q)
+    kept_lift: Floats  # (m, n) in the last round
+    kept_theta: Floats  # (m, q)
 
 
 @kernel
@@ -123,6 +128,7 @@ def bench(groups: int, nodes: int) -> Bench:
         np.zeros(nodes), np.zeros((contacts, contacts)), np.zeros(contacts), np.zeros(groups), np.zeros(groups),
         np.zeros((groups, nodes)), np.zeros((groups, POINTS)), np.zeros((groups, nodes)),
         np.zeros((groups, POINTS)), np.zeros((groups, POINTS)), np.zeros((groups, nodes + 1)),
+        np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
         np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
     )  # fmt: skip
 
@@ -481,12 +487,34 @@ def _shrink(tables: Tables, layers: Layers, setting: Setting, b: Bench) -> None:
 
 
 @inner
+def _keep(layers: Layers, b: Bench) -> None:
+    """Remember the shapes of this round."""
+    for g in range(layers.plate.size):
+        for u in range(b.reach[g]):
+            b.kept_lift[g, u] = b.lift[g, u]
+        for q in range(POINTS):
+            b.kept_theta[g, q] = b.theta[g, q]
+
+
+@inner
+def _average(layers: Layers, b: Bench) -> None:
+    """Take the mean of the shapes of the last round and of this one."""
+    for g in range(layers.plate.size):
+        for u in range(b.reach[g]):
+            b.lift[g, u] = 0.5 * (b.lift[g, u] + b.kept_lift[g, u])
+        for q in range(POINTS):
+            b.theta[g, q] = 0.5 * (b.theta[g, q] + b.kept_theta[g, q])
+
+
+@inner
 def settle(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float, scale: float
 ) -> int:
     """Equilibrium at one pressure, from the shapes in ``b``; rounds taken, -1 when none was found."""
     for rounds in range(1, MOST_ROUNDS + 1):
         before = b.lift[0, b.reach[0] - 1]
+        if rounds >= AVERAGED_FROM:
+            _keep(layers, b)
         _stretch_loads(tables, layers, setting, b)
         _without_contact(tables, layers, pressure, b)
         if not _find_contacts(tables, layers, b, scale):
@@ -494,6 +522,8 @@ def settle(
         _turn(tables, layers, b)
         if rounds == 1 and before == 0.0:
             _shrink(tables, layers, setting, b)
+        if rounds >= AVERAGED_FROM:
+            _average(layers, b)
         after = b.lift[0, b.reach[0] - 1]
         if abs(after - before) <= setting.tolerance * abs(after):
             return rounds

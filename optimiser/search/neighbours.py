@@ -15,14 +15,17 @@ class Neighbours:
     def __init__(self, space: Space) -> None:
         self.space = space
         self._around = Steps.of(space).around()
+        self._alike = _alike(space)
         self._one = np.eye(2 * len(space.sizes), dtype=np.int64).reshape(-1, 2, len(space.sizes))
 
     def single(self, plan: Plans) -> Plans:
         """Buildable plans with one change: a shim exchanged, added, taken out or moved to the
-        other stage; another crossover; a gap opened or closed; another clamp diameter.
+        other stage; two shims of different stages, or the thicknesses of two diameters, changing
+        places; another crossover; a gap opened or closed; another clamp diameter.
         """
         counts = self.space.decode(plan.reshape(1, -1))
-        return self._finish([*self._pieces(counts), *self._gaps(counts), self._clamps(counts)])
+        batches = [self._pieces(counts), self._swaps(counts), self._clamps(counts)]
+        return self._finish([*batches, *self._gaps(counts)])
 
     def double(self, plan: Plans, most: int, rng: Random) -> Plans:
         """Up to ``most`` random buildable plans with two changes, most of them small.
@@ -56,7 +59,7 @@ class Neighbours:
         plans, sound = self._sound(both.pick(pairs))
         return plans, pairs[sound]
 
-    def _pieces(self, counts: Counts) -> list[Counts]:
+    def _pieces(self, counts: Counts) -> Counts:
         """One shim added, taken out, exchanged, or moved to the other stage."""
         single = counts.pieces[0]
         stages = 2 if counts.two_stage[0] else 1
@@ -65,7 +68,27 @@ class Neighbours:
         losses = self._one[np.flatnonzero(single.ravel())]
         both = (gains[None] - losses[:, None]).reshape(-1, 2, sizes)
         changes = np.concatenate([gains, -losses, both])
-        return [_with_pieces(counts, single + changes)]
+        return _with_pieces(counts, single + changes)
+
+    def _swaps(self, counts: Counts) -> Counts:
+        """Two shims change stages, or two diameters exchange their thicknesses."""
+        sizes, single = len(self.space.sizes), counts.pieces[0]
+        laid = np.flatnonzero(single.ravel())
+        one, other = laid[np.array(np.triu_indices(len(laid), 1))]
+        apart = one // sizes != other // sizes
+        into_one, into_other = _elsewhere(other, sizes), _elsewhere(one, sizes)
+        stages = self._exchanged(one, other, into_one, into_other)[apart]
+        into_one = one - one % sizes + self._alike[one % sizes, other % sizes]
+        into_other = other - other % sizes + self._alike[other % sizes, one % sizes]
+        known = (self._alike[one % sizes, other % sizes] >= 0) & (
+            self._alike[other % sizes, one % sizes] >= 0
+        )
+        thicknesses = self._exchanged(one, other, into_one, into_other)[known]
+        return _with_pieces(counts, single + np.concatenate([stages, thicknesses]))
+
+    def _exchanged(self, one: Ints, other: Ints, new_one: Ints, new_other: Ints) -> Ints:
+        lost = self._one[one] + self._one[other]
+        return np.asarray(self._one[new_one] + self._one[new_other] - lost)
 
     def _gaps(self, counts: Counts) -> list[Counts]:
         """Another crossover; the gap closed; or a gap opened below any shim."""
@@ -131,6 +154,23 @@ def _with_pieces(counts: Counts, pieces: Ints) -> Counts:
     """Copies of a single plan's counts with other pieces (rows, 2, sizes)."""
     rows = len(pieces)
     return Counts(pieces, np.repeat(counts.crossover, rows), np.repeat(counts.clamp, rows))
+
+
+def _elsewhere(flat: Ints, sizes: int) -> Ints:
+    """The same sizes in the other stage (flat index: stage times ``sizes`` plus size)."""
+    return np.asarray((flat + sizes) % (2 * sizes))
+
+
+def _alike(space: Space) -> Ints:
+    """(sizes, sizes) the size with the row's diameter and the column's thickness, -1 for none."""
+    nominal, diameter = space.sizes.nominal_mm, space.diameter
+    count = len(nominal)
+    table = np.full((count, count), NONE)
+    for size in range(count):
+        same = np.abs(nominal - nominal[size]) < 1e-6
+        for other in np.flatnonzero(same):
+            table[diameter == diameter[other], size] = other
+    return table
 
 
 def _splits(stage: Ints) -> Ints:

@@ -76,7 +76,7 @@ class Polish:
         self._seen = 0
         self._any_within = False
         self._ran = 0
-        self._turn = False
+        self._turn = 0
 
     def run(self) -> None:
         """Improve until nothing helps, the evaluations are spent or the user stops."""
@@ -184,13 +184,17 @@ class Polish:
         work = self._systematic(by_parts) or self._systematic(by_family)
         if work:
             return work
-        self._turn = not self._turn
-        rest = (self._on_front, lambda: self._at_random([*by_parts, *by_family]))
-        for choose in rest if self._turn else rest[::-1]:
-            work = choose()
+        choices = (
+            self._on_front,
+            lambda: self._at_random([*by_parts, *by_family]),
+            self._runner_up,
+        )
+        for _ in choices:
+            self._turn += 1
+            work = choices[self._turn % len(choices)]()
             if work:
                 return work
-        return self._runner_up()
+        return None
 
     def _systematic(self, rows: list[int]) -> Work | None:
         """Single changes of the first row that lacks them, then its promising pairs."""

@@ -106,32 +106,27 @@ def way_of(said: Said) -> Way:
 
 
 def directions_of(
-    said: Said, way: Way, asked: list[Direction] | None, available: list[Direction]
+    said: Said, asked: list[Direction] | None, available: list[Direction]
 ) -> list[Direction]:
     """The directions to make targets of.
 
-    Those ``asked`` for; else all the damper has, but only the first where one file, which holds
-    one direction, says what is wanted. Raises BadInput when files and directions do not match.
+    Those ``asked`` for; else all the damper has, but only the first where an option names a single
+    file, which holds one direction. Raises BadInput when files and directions do not match.
     """
-    option, files = _files_of(said, way)
+    files = {"--target": said.targets, "--copy": said.copies, "--fitted": said.fitted}
     directions = asked
     if directions is None:
-        directions = available[:1] if len(files) == 1 else available
-    if files and len(files) != len(directions) and not (option == "--copy" and len(files) == 1):
-        raise BadInput(
-            f"{option} is given {_times(len(files))} for {' and '.join(directions)}; allowed: once "
-            "a direction, compression first, or name one --circuit"
-        )
+        single = any(len(names) == 1 for names in files.values())
+        directions = available[:1] if single else available
+    faults = [
+        f"{option} is given {_times(len(names))} for {' and '.join(directions)}; allowed: once a "
+        "direction, compression first, or name one --circuit"
+        for option, names in files.items()
+        if len(names) not in (0, len(directions)) and not (option == "--copy" and len(names) == 1)
+    ]
+    if faults:
+        raise BadInput(faults)
     return directions
-
-
-def _files_of(said: Said, way: Way) -> tuple[str, tuple[str, ...]]:
-    """The option that names files of one direction each, and the files."""
-    if way == "points":
-        return "--target", said.targets
-    if way == "copy":
-        return "--copy", said.copies
-    return "--fitted", said.fitted
 
 
 def _times(count: int) -> str:
@@ -185,7 +180,5 @@ def _faults_of_ride(said: Said) -> list[str]:
             f"--rider-kg is {mass:g}; allowed: {LEAST_RIDER_KG:g} to {MOST_RIDER_KG:g} kg, with kit"
         )
     if sag is not None and not LEAST_SAG_PERCENT <= sag <= MOST_SAG_PERCENT:
-        faults.append(
-            f"--sag is {sag:g}; allowed: {LEAST_SAG_PERCENT:g} to {MOST_SAG_PERCENT:g} %"
-        )
+        faults.append(f"--sag is {sag:g}; allowed: {LEAST_SAG_PERCENT:g} to {MOST_SAG_PERCENT:g} %")
     return faults
