@@ -1,4 +1,4 @@
-"""What a damper can do at all: the limits enclose every stack and are approached by extreme ones."""
+"""What a damper can do at all: limits that enclose every stack and that extreme ones come near."""
 
 from dataclasses import replace
 

@@ -17,7 +17,7 @@ from optimiser.faults import BadInput, NothingBuildable
 P = ParamSpec("P")
 
 #: Every command, in the order of the help page.
-COMMANDS = ("init", "curve", "target", "stock")
+COMMANDS = ("init", "curve", "find", "target", "stock")
 
 EXIT_NOTHING_BUILDABLE = 1
 EXIT_BAD_INPUT = 2

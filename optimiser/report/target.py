@@ -34,15 +34,16 @@ from optimiser.wish import RideWish, Wished
 _DRAWN_UP_TO = 1.6
 _MOST_PRINTED_N = 99_999.0
 
+#: What stops the damper, in a word; the sentences below the table say more.
 _SHORT: dict[Reason, str] = {
-    "bleed_too_large": "bleed too large",
-    "ports_too_small": "ports too small",
-    "other_parts_too_firm": "others too firm",
+    "bleed_too_large": "bleed",
+    "ports_too_small": "ports",
+    "other_parts_too_firm": "other parts",
     "no_preload": "no preload",
-    "preload_too_small": "preload too small",
-    "preload_too_high": "preload too high",
-    "no_shim_thick_enough": "shims too thin",
-    "no_shim_thin_enough": "shims too thick",
+    "preload_too_small": "preload",
+    "preload_too_high": "preload",
+    "no_shim_thick_enough": "stock",
+    "no_shim_thin_enough": "stock",
 }
 _LEGEND = (
     "Softest: no shim at all, needle open. Firmest: shims that never lift, needle closed. Lies at: "
@@ -114,7 +115,7 @@ def target_table(seen: Seen, look: Look) -> Table:
         table.add_row(
             Text(f"{velocity:.4g}"),
             Text(force_text(target.force_n[row]), style="bold"),
-            Text(f"{target.weight[row]:g}"),
+            Text(f"{target.weight[row]:.3g}"),
             *_now_cells(target.force_n[row], seen.now, row),
             Text(_limit_text(limits.softest_n[row]), style="dim"),
             Text(_limit_text(limits.firmest_n[row]), style="dim"),
@@ -201,8 +202,15 @@ def _now_cells(wanted_n: float, now: Prediction | None, row: int) -> list[Text]:
     if now is None:
         return []
     force = float(now.force_n[row])
-    change = round(100.0 * (wanted_n / force - 1.0), 1) if np.isfinite(force) else None
-    return [Text(force_text(force)), Text("-" if change is None else f"{change + 0.0:+.1f}")]
+    return [Text(force_text(force)), Text(_change_text(wanted_n, force))]
+
+
+def _change_text(wanted_n: float, force_n: float) -> str:
+    """Change from the fitted stack's force, %, without a minus before a zero."""
+    if not np.isfinite(force_n):
+        return "-"
+    percent = 100.0 * (wanted_n / force_n - 1.0)
+    return f"{percent:+.0f}" if percent >= 999.5 else f"{round(percent, 1) + 0.0:+.1f}"
 
 
 def _limit_text(force_n: float) -> str:

@@ -168,7 +168,7 @@ def test_a_target_partly_outside_says_what_stops_the_damper(tmp_path: Path) -> N
     file.write_text("velocity_m_s,force_n\n0.05,12\n0.1,14\n0.3,400\n0.6,800\n", encoding="utf-8")
     called = call("target", "--target", str(file), env={"COLUMNS": "80"})
     assert called.code == 0
-    assert "outside: others too firm" in called.out
+    assert "outside: other parts" in called.out
     assert "outside at 2 points" in called.out
     assert WITHIN not in called.out
     assert not lines_wider_than(called.out, 80)
@@ -180,10 +180,12 @@ def test_a_target_partly_outside_says_what_stops_the_damper(tmp_path: Path) -> N
 
 def test_a_fitted_stack_and_points_outside_still_fit_80_columns(tmp_path: Path) -> None:
     file = tmp_path / "t.csv"
-    file.write_text("velocity_m_s,force_n\n0.05,12\n0.3,400\n1.2,90000\n", encoding="utf-8")
+    file.write_text(
+        "velocity_m_s,force_n,weight\n0.05,12,0.333\n0.3,400,1\n1.2,90000,1\n", encoding="utf-8"
+    )
     called = call("target", "--target", str(file), "--fitted", "fitted", env={"COLUMNS": "80"})
     assert called.code == 0
-    assert "outside: others too firm" in called.out
+    assert "outside: other parts" in called.out
     assert not lines_wider_than(called.out, 80)
 
 
