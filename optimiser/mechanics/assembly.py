@@ -4,7 +4,6 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import kernel, step
 from optimiser.mechanics.layout import Floats, Ints, find_contacts, nearest, radii_between
 from optimiser.mechanics.membrane import inner_factor, outer_factor
 from optimiser.mechanics.plate import pressure_response
@@ -45,43 +44,24 @@ class Model(NamedTuple):
     spring: Floats  # (3,) radius m, rate N/m, preload N
 
 
-@step
 def _fixed_radii(
     groups: Floats, clamp: float, port: Floats, seat: Floats, spring: Floats
 ) -> Floats:
     """Radii that must be among the nodes: edges, ring holes, port ring, seat, spring."""
     widest = np.max(groups[:, 0])
-    candidates = np.empty(2 * groups.shape[0] + 4)
-    candidates[: groups.shape[0]] = groups[:, 0]
-    candidates[groups.shape[0] : -4] = groups[:, 4]
-    candidates[-4] = port[0]
-    candidates[-3] = port[1]
-    candidates[-2] = seat[0]
-    candidates[-1] = min(spring[0], widest)
-    count = 0
-    for radius in candidates:
-        if clamp < radius <= widest:
-            candidates[count] = radius
-            count += 1
-    return candidates[:count].copy()
+    ring = [*port, seat[0], min(spring[0], widest)]
+    candidates = np.concatenate([groups[:, 0], groups[:, 4], ring])
+    return np.asarray(candidates[(candidates > clamp) & (candidates <= widest)])
 
 
-@step
 def _gauss_points(radii: Floats, clamp: float) -> tuple[Floats, Floats]:
     """Two Gauss points and weights between consecutive radii, from the clamp outwards."""
-    points = np.empty(2 * radii.size)
-    weights = np.empty(2 * radii.size)
-    low = clamp
-    for k in range(radii.size):
-        width = radii[k] - low
-        for q in range(2):
-            points[2 * k + q] = low + width * _GAUSS[q]
-            weights[2 * k + q] = 0.5 * width
-        low = radii[k]
-    return points, weights
+    low = np.concatenate([[clamp], radii[:-1]])
+    width = radii - low
+    points = low[:, None] + width[:, None] * _GAUSS
+    return points.ravel(), np.repeat(0.5 * width, 2)
 
 
-@step
 def _plates(
     groups: Floats,
     count: Ints,
@@ -111,13 +91,11 @@ def _plates(
             unit = inverse(compliance(radii[:k], clamp, edge, poisson))
             bending[g, :k, :k] = unit * (rigidity * groups[g, 2])
             turned = slopes(points[: 2 * k], radii[:k], clamp, edge, poisson)
-            slope[g, : 2 * k, :k] = np.dot(turned, unit)
-            for q in range(2 * k):
-                outer[g, q] = outer_factor(points[q], clamp, edge, poisson)
+            slope[g, : 2 * k, :k] = turned @ unit
+            outer[g, : 2 * k] = [outer_factor(r, clamp, edge, poisson) for r in points[: 2 * k]]
     return bending, slope, outer
 
 
-@step
 def _contacts(
     groups: Floats,
     radii: Floats,
@@ -148,7 +126,6 @@ def _contacts(
     return front, back, gap, push
 
 
-@kernel
 def assemble(
     groups: Floats,
     clamp: float,
@@ -178,19 +155,16 @@ def assemble(
         start[g + 1] = start[g] + count[g]
     rigidity = youngs / (12.0 * (1.0 - poisson * poisson))
     bending, slope, outer = _plates(groups, count, radii, points, clamp, rigidity, poisson)
-    inner = np.empty(points.size)
-    for q in range(points.size):
-        inner[q] = inner_factor(points[q], clamp, poisson)
+    inner = np.array([inner_factor(r, clamp, poisson) for r in points])
     front, back, gap, push = _contacts(groups, radii, start, bending, clamp, seat)
 
     k = count[0]
-    lifted = np.empty(k)
-    for i in range(k):
-        lifted[i] = pressure_response(
-            radii[i], port[0], port[1], clamp, groups[0, 0], poisson, False
-        )
+    edge = float(groups[0, 0])
+    lifted = np.array(
+        [pressure_response(r, port[0], port[1], clamp, edge, poisson, False) for r in radii[:k]]
+    )
     load = np.zeros(radii.size)
-    load[:k] = np.dot(bending[0, :k, :k].copy(), lifted) / (rigidity * groups[0, 2])
+    load[:k] = bending[0, :k, :k] @ lifted / (rigidity * groups[0, 2])
 
     sprung = -1
     if spring[0] > 0.0:

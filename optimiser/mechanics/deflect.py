@@ -245,15 +245,13 @@ def _fine(question: _Pressed, groups: Floats, ladder: Floats, stretched: bool) -
         groups, question.clamp, np.array(question.port), seat, np.array(question.spring),
         question.youngs, question.poisson, PIECES,
     )  # fmt: skip
-    lifts, _, steps = shapes(model, ladder, stretched)
+    lifts, steps = shapes(model, ladder, stretched)
     if np.any(steps < 0):
         raise ArithmeticError(
             f"no equilibrium at {ladder[steps < 0][0]:g} Pa after the allowed Newton steps"
         )
-    moments = np.stack([bending_moments(model, lifts[p], ladder[p]) for p in range(ladder.size)])
-    pulls = np.zeros_like(moments)
-    if stretched:
-        pulls = np.stack([membrane_forces(model, lift) for lift in lifts])
+    moments = bending_moments(model, lifts, ladder)
+    pulls = membrane_forces(model, lifts) if stretched else np.zeros_like(moments)
     rest = question.seat if question.seat > 0.0 else min(question.port[1], question.outer[0])
     seat_rise = lifts[:, nearest(model.radii, rest)] - question.seat_height
     radii = np.concatenate([[question.clamp], model.radii])

@@ -17,8 +17,8 @@ from optimiser.compiled import kernel, step
 from optimiser.mechanics.assembly import Model
 from optimiser.mechanics.layout import Floats, Ints
 from optimiser.mechanics.membrane import inner_factor, outer_factor, stress_function
-from optimiser.mechanics.plate import pressure_response, ring_moment
-from optimiser.mechanics.plates import back_substitute, factor
+from optimiser.mechanics.plate import pressure_response
+from optimiser.mechanics.plates import back_substitute, factor, moments_at
 
 RELATIVE_TOLERANCE = 1e-8
 MOST_STEPS = 100
@@ -42,17 +42,13 @@ class Work(NamedTuple):
     carried: Floats  # (q, n)
 
 
-@kernel
 def scratch(model: Model) -> Work:
     """Arrays for :func:`evaluate`, made once a stack."""
     size = model.start[-1]
     m, q, n = model.slope.shape
-    widest = np.empty(size, dtype=np.int64)
-    for g in range(m):
-        widest[model.start[g] : model.start[g + 1]] = model.start[g + 1] - 1
-    for c in range(model.front.size):
-        if model.back[c] >= 0:
-            widest[model.front[c]] = max(widest[model.front[c]], model.back[c])
+    widest = np.repeat(model.start[1:] - 1, model.held)
+    for f, b in zip(model.front, model.back, strict=True):
+        widest[f] = max(widest[f], b)
     return Work(
         np.zeros(size),
         np.zeros((size, size)),
@@ -206,7 +202,7 @@ def _shorten(
         evaluate(model, shape, work, pressure, stretched, 0.0)
 
 
-@step
+@kernel
 def _descend(
     model: Model, shape: Floats, work: Work, pressure: float, stretched: bool, at_rest: bool,
     whole: int,
@@ -237,93 +233,79 @@ def _descend(
     return -1
 
 
-@kernel
-def shapes(model: Model, pressures: Floats, stretched: bool) -> tuple[Floats, Floats, Ints]:
+def shapes(model: Model, pressures: Floats, stretched: bool) -> tuple[Floats, Ints]:
     """Equilibrium at each of ``pressures`` (p,), ascending, Pa.
 
-    Returns deflections (p, s) m, stress functions per E t (p, m, q) m (zeros without stretching) and
-    Newton steps (p,), -1 where no equilibrium was found.
+    Returns deflections (p, s) m and Newton steps (p,), -1 where no equilibrium was found.
     """
-    size = model.start[-1]
     work = scratch(model)
-    result = np.zeros((pressures.size, size))
-    force = np.zeros((pressures.size, *work.force.shape))
+    result = np.zeros((pressures.size, model.start[-1]))
     steps = np.zeros(pressures.size, dtype=np.int64)
-    shape = np.zeros(size)
-    base = np.zeros(size)
-    earlier = 0.0
-    for p in range(pressures.size):
-        if p > 0 and pressures[p - 1] > earlier:
-            ahead = (pressures[p] - pressures[p - 1]) / (pressures[p - 1] - earlier)
-            shape = result[p - 1] + ahead * (result[p - 1] - base)
-            earlier = pressures[p - 1]
-            base = result[p - 1]
-        start = shape.copy()
-        steps[p] = _descend(model, shape, work, pressures[p], stretched, p == 0, FULL_STEPS)
-        if steps[p] < 0:
-            shape = start
-            steps[p] = _descend(model, shape, work, pressures[p], stretched, p == 0, 0)
+    base, earlier = np.zeros(model.start[-1]), 0.0
+    for p, pressure in enumerate(pressures):
+        start = base
+        if p > 0:
+            start = result[p - 1]
+            if pressures[p - 1] > earlier:
+                ahead = (pressure - pressures[p - 1]) / (pressures[p - 1] - earlier)
+                start = start + ahead * (start - base)
+                base, earlier = result[p - 1], pressures[p - 1]
+        for whole in (FULL_STEPS, 0):
+            shape = start.copy()
+            steps[p] = _descend(model, shape, work, pressure, stretched, p == 0, whole)
+            if steps[p] >= 0:
+                break
         result[p] = shape
-        force[p] = work.force
-    return result, force, steps
+    return result, steps
 
 
-@kernel
 def contact_forces(model: Model, shape: Floats) -> tuple[Floats, Floats]:
     """Force N (c,) and clearance m (c,) of every contact; the seat, if any, is the last."""
-    clear = model.gap.copy()
-    for c in range(clear.size):
-        f, b = model.front[c], model.back[c]
-        clear[c] += shape[b] - shape[f] if b >= 0 else shape[f]
+    behind = np.where(model.back >= 0, shape[model.back], 2.0 * shape[model.front])
+    clear = model.gap + behind - shape[model.front]
     return model.push * np.maximum(0.0, -clear), np.maximum(0.0, clear)
 
 
-@kernel
-def bending_moments(model: Model, shape: Floats, pressure: float) -> Floats:
-    """Radial moment per length, N, of every group at the clamp and at every radius (m, n + 1)."""
-    m, n = model.held.size, model.radii.size
-    moments = np.zeros((m, n + 1))
-    for g in range(m):
-        s, k = model.start[g], model.held[g]
-        edge = model.groups[g, 0]
-        for i in range(k + 1):
-            r = model.clamp if i == 0 else model.radii[i - 1]
-            if g == 0:
-                port = model.port
-                moments[g, i] = pressure * pressure_response(
-                    r, port[0], port[1], model.clamp, edge, model.poisson, True
-                )
-        for j in range(k):
-            ring = np.dot(model.bending[g, j, :k], shape[s : s + k])
-            if g == 0:
-                ring -= pressure * model.load[j]
-            for i in range(k + 1):
-                r = model.clamp if i == 0 else model.radii[i - 1]
-                moments[g, i] += ring * ring_moment(
-                    r, model.radii[j], model.clamp, edge, model.poisson
-                )
+def bending_moments(model: Model, lifts: Floats, pressures: Floats) -> Floats:
+    """Radial moment per length, N, (p, m, n + 1) of every group at the clamp and every radius.
+
+    ``lifts`` (p, s) of :func:`shapes` at ``pressures`` (p,).
+    """
+    radii = np.concatenate([[model.clamp], model.radii])
+    moments = np.zeros((pressures.size, model.held.size, radii.size))
+    for g, k in enumerate(model.held):
+        if k == 0:
+            continue
+        s, edge = model.start[g], float(model.groups[g, 0])
+        rings = lifts[:, s : s + k] @ model.bending[g, :k, :k]
+        if g == 0:
+            rings -= pressures[:, None] * model.load[:k]
+            low, high = model.port
+            pressed = [
+                pressure_response(r, low, high, model.clamp, edge, model.poisson, True)
+                for r in radii[: k + 1]
+            ]
+            moments[:, 0, : k + 1] = pressures[:, None] * np.array(pressed)
+        unit = moments_at(radii[: k + 1], model.radii[:k], model.clamp, edge, model.poisson)
+        moments[:, g, : k + 1] += rings @ unit.T
     return moments
 
 
-@kernel
-def membrane_forces(model: Model, shape: Floats) -> Floats:
-    """Radial membrane force per length, N/m, of every group at the clamp and radii (m, n + 1)."""
-    m, n = model.held.size, model.radii.size
-    result = np.zeros((m, n + 1))
-    for g in range(m):
-        s, k = model.start[g], model.held[g]
-        theta = np.dot(model.slope[g, : 2 * k, :k].copy(), shape[s : s + k])
-        for i in range(k + 1):
-            r = model.clamp if i == 0 else model.radii[i - 1]
-            inside = 0.0
-            outside = 0.0
-            for q in range(2 * k):
-                stretch = 0.5 * model.weights[q] * theta[q] * theta[q]
-                if model.points[q] < r:
-                    inside += model.inner[q] * stretch
-                else:
-                    outside += model.outer[g, q] * stretch
-            total = outer_factor(r, model.clamp, model.groups[g, 0], model.poisson) * inside
-            total += inner_factor(r, model.clamp, model.poisson) * outside
-            result[g, i] = model.stretching[g] * total / r
+def membrane_forces(model: Model, lifts: Floats) -> Floats:
+    """Radial membrane force per length, N/m, (p, m, n + 1) at the same places."""
+    radii = np.concatenate([[model.clamp], model.radii])
+    result = np.zeros((len(lifts), model.held.size, radii.size))
+    for g, k in enumerate(model.held):
+        s, edge = model.start[g], float(model.groups[g, 0])
+        at, points = radii[: k + 1, None], model.points[: 2 * k]
+        theta = lifts[:, s : s + k] @ model.slope[g, : 2 * k, :k].T
+        stretch = 0.5 * model.weights[: 2 * k] * theta**2
+        near = np.array([inner_factor(r, model.clamp, model.poisson) for r in at[:, 0]])
+        far = np.array([outer_factor(r, model.clamp, edge, model.poisson) for r in at[:, 0]])
+        green = np.where(
+            points < at,
+            far[:, None] * model.inner[: 2 * k],
+            near[:, None] * model.outer[g, : 2 * k],
+        )
+        result[:, g, : k + 1] = model.stretching[g] * (stretch @ (green / at).T)
     return result

@@ -56,7 +56,6 @@ def group_shims(outer: Floats, thickness: Floats, hole: Floats) -> tuple[Floats,
     return groups[:count].copy(), member
 
 
-@kernel
 def radii_between(clamp: float, fixed: Floats, spacing: float) -> Floats:
     """Sorted radii beyond the clamp: all ``fixed`` ones, and more so that none is far apart."""
     ordered = np.sort(fixed)
@@ -75,13 +74,11 @@ def radii_between(clamp: float, fixed: Floats, spacing: float) -> Floats:
     return radii[:count].copy()
 
 
-@kernel
 def nearest(radii: Floats, radius: float) -> int:
     """Index of the radius closest to ``radius``."""
     return int(np.argmin(np.abs(radii - radius)))
 
 
-@kernel
 def find_contacts(groups: Floats, radii: Floats, span: float) -> tuple[Ints, Floats]:
     """Every contact that may close.
 

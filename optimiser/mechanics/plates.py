@@ -8,7 +8,7 @@ import numpy as np
 
 from optimiser.compiled import kernel
 from optimiser.mechanics.layout import Floats, Ints
-from optimiser.mechanics.plate import ring_deflection, ring_slope
+from optimiser.mechanics.plate import ring_deflection, ring_moment, ring_slope
 
 
 @kernel
@@ -30,6 +30,16 @@ def slopes(points: Floats, radii: Floats, clamp: float, edge: float, poisson: fl
     for i in range(points.size):
         for j in range(radii.size):
             result[i, j] = ring_slope(points[i], radii[j], clamp, edge, poisson)
+    return result
+
+
+@kernel
+def moments_at(points: Floats, radii: Floats, clamp: float, edge: float, poisson: float) -> Floats:
+    """Radial moment at each of ``points`` (m,) under 1 N on each ring of ``radii`` (n,); (m, n)."""
+    result = np.empty((points.size, radii.size))
+    for i in range(points.size):
+        for j in range(radii.size):
+            result[i, j] = ring_moment(points[i], radii[j], clamp, edge, poisson)
     return result
 
 

@@ -5,7 +5,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optimiser.compiled import inner, kernel
+from optimiser.compiled import kernel, step
 from optimiser.hydraulics.circuit import fixed_force_n
 from optimiser.hydraulics.lift import pressure_grid
 from optimiser.hydraulics.valve import ValveNumbers, bleed_settings, drops_at, valve_numbers
@@ -64,7 +64,7 @@ class Desk(NamedTuple):
     trial: Floats  # (n,) force over wanted force less 1 at the click being tried
 
 
-@inner
+@step
 def _stack_up(plan: Plans, shelf: Shelf, layers: Layers) -> int:
     """Write a plan's groups, face first; their number."""
     count = 0
@@ -85,7 +85,13 @@ def _stack_up(plan: Plans, shelf: Shelf, layers: Layers) -> int:
     return count
 
 
-@inner
+@step
+def _copy(source: Floats, target: Floats) -> None:
+    for n in range(source.size):
+        target[n] = source[n]
+
+
+@step
 def _misfit(job: Job, desk: Desk, click: int) -> float:
     """Weighted r.m.s. of force over wanted force less 1 at a click; leaves the points in the desk."""
     drops_at(
@@ -101,13 +107,13 @@ def _misfit(job: Job, desk: Desk, click: int) -> float:
     return float(np.sqrt(total))
 
 
-@inner
+@step
 def _best_click(job: Job, desk: Desk, relative: Floats) -> tuple[int, float]:
     """Click with the least error, by steps that halve from the middle of the range."""
     count = job.bleed_a.size
     best = count // 2
     error = _misfit(job, desk, best)
-    relative[:] = desk.trial
+    _copy(desk.trial, relative)
     stride = max(1, (count + 1) // 4)
     while count > 1:
         moved = False
@@ -116,7 +122,7 @@ def _best_click(job: Job, desk: Desk, relative: Floats) -> tuple[int, float]:
                 value = _misfit(job, desk, trial)
                 if value < error:
                     best, error, moved = trial, value, True
-                    relative[:] = desk.trial
+                    _copy(desk.trial, relative)
                     break
         if not moved:
             if stride == 1:
@@ -125,7 +131,7 @@ def _best_click(job: Job, desk: Desk, relative: Floats) -> tuple[int, float]:
     return best, error
 
 
-@inner
+@step
 def _at(table: Floats, pressures: Floats, pressure: float) -> float:
     """Linear interpolation, carried on past the last entry; through 0 before the first."""
     k = 0
@@ -138,13 +144,13 @@ def _at(table: Floats, pressures: Floats, pressure: float) -> float:
     return low + share * (high - low)
 
 
-@inner
+@step
 def _with_opening(job: Job, force: Floats, desk: Desk) -> None:
     """Lift table of the desk, with the opening pressure in place of the last closed entry.
 
     ``force`` (k,) on the seat: it falls almost in a straight line until the stack opens.
     """
-    desk.pressures[:] = job.pressures
+    _copy(job.pressures, desk.pressures)
     last = -1
     for k in range(desk.lift.size):
         if desk.lift[k] <= 0.0 or force[k] > 0.0:
@@ -181,8 +187,10 @@ def score(
             tables, layers, setting, loaded, b, desk.edge, desk.lift, desk.stress, force
         )
         if rounds < 0:
-            results[row, :] = HOPELESS
-            relative[row, :] = HOPELESS
+            for k in range(4):
+                results[row, k] = HOPELESS
+            for n in range(job.flows.size):
+                relative[row, n] = HOPELESS
             continue
         _with_opening(job, force, desk)
         click, error = _best_click(job, desk, relative[row])

@@ -1,10 +1,10 @@
 """The local pass: change the best stacks shim by shim until no single change helps.
 
-Champions come first: the least error for each number of parts, then for each family (diameters of
-face, clamp and crossover). All their single changes are tried, then the combinations of two to
+Champions come first: the least error for each number of parts, then for each family (face and
+clamp diameter, crossover size). All their single changes are tried, then the combinations of two to
 four changes that look best when the changes' effects on the curve are added up. After that the
-rest of the front and random double changes of the champions take turns; every gain starts the
-sequence anew. A stack's neighbourhood is looked at once.
+rest of the front, random double changes of the champions, and the neighbourhoods of the stacks
+next in error take turns; every gain starts the sequence anew. A neighbourhood is looked at once.
 """
 
 from dataclasses import dataclass
@@ -36,9 +36,10 @@ class Effort:
     changes (up to ``depth`` more than one) ``combined`` each are tried at a time, for at most
     ``combined_rounds`` times a stack, if their hoped-for error is below ``hope`` times the
     stack's; not for errors below ``enough`` (a fraction), which no damper would show.
-    ``random`` double changes a round and ``random_rounds`` rounds for each champion; at the end
-    the neighbourhoods of ``runners_up`` further stacks. Champions with more than ``keen`` times
-    the least error (plus one percentage point) are left alone.
+    Champions with more than ``keen`` times the least error (plus one percentage point), and all
+    but the best ``families``, are left alone. ``random`` double changes a round and
+    ``random_rounds`` rounds for each champion; ``runners_up`` further stacks, lowest error
+    first, have their neighbourhoods looked at.
     """
 
     batch: int = 48
@@ -50,7 +51,7 @@ class Effort:
     random_rounds: int = 6
     runners_up: int = 100
     keen: float = 3.0
-    families: int = 20
+    families: int = 8
     enough: float = 0.0005
 
 
@@ -197,7 +198,7 @@ class Polish:
         return None
 
     def _systematic(self, rows: list[int]) -> Work | None:
-        """Single changes of the first row that lacks them, then its promising pairs."""
+        """Single changes of the first row that lacks them, then its promising combinations."""
         errors = self.archive.objectives[:, 0]
         for row in rows:
             if row not in self._singled:
@@ -235,12 +236,11 @@ class Polish:
 
     def _keen(self, champions: dict[int, int]) -> list[int]:
         """Champions not much worse than the best of them, best first."""
-        errors = self.archive.objectives[:, 0]
-        ranked = sorted(set(champions.values()), key=lambda row: (errors[row], row))
-        if not ranked:
-            return []
-        limit = self.effort.keen * errors[ranked[0]] + 0.01
-        return [row for row in ranked if errors[row] <= limit]
+        rows = np.unique(np.fromiter(champions.values(), np.int64, len(champions)))
+        errors = self.archive.objectives[rows, 0]
+        near = errors <= self.effort.keen * errors.min(initial=np.inf) + 0.01
+        rows, errors = rows[near], errors[near]
+        return [int(row) for row in rows[np.argsort(errors, kind="stable")]]
 
 
 def _as_rows(rows: set[int]) -> Ints:

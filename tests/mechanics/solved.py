@@ -65,7 +65,7 @@ def fine(question: Question, pressures_mpa: np.ndarray, stretched: bool, pieces:
         np.array(spring), YOUNGS, POISSON, pieces,
     )  # fmt: skip
     pressures = pressures_mpa * 1e6
-    found, _, steps = shapes(model, pressures, stretched)
+    found, steps = shapes(model, pressures, stretched)
     assert np.all(steps >= 0)
     return Fine(model, pressures, found, stretched)
 
