@@ -5,6 +5,7 @@ series (``time_s,displacement_mm,force_n``). Column names end in their unit (``v
 ``force_lbf``) unless the request names columns and units. Further columns are passed over.
 """
 
+from json import loads
 from pathlib import Path
 from typing import NamedTuple
 
@@ -17,6 +18,7 @@ from optimiser.fitting.request import FITTED, FitRequest, RunRequest
 from optimiser.fitting.runs import Run, run_faults
 from optimiser.fitting.series import motion_of
 from optimiser.fitting.strokes import Strokes, strokes_of
+from optimiser.fitting.uncertainty import Uncertainty, uncertainty_of_record
 from optimiser.fitting.units import SUFFIXES, UNITS, Quantity, question
 from optimiser.hydraulics.lift import Floats
 from optimiser.parsing import Columns, Table, nearest, parse_table
@@ -61,6 +63,21 @@ def read_fit_request(name_or_path: str | Path) -> FitRequest:
     return validate(FitRequest, read_toml(path), str(path))
 
 
+def read_uncertainty(path: str | Path) -> Uncertainty:
+    """Spread of a calibrated damper's numbers, from the ``.fit.json`` that ``fit --out`` writes.
+
+    Raises BadInput.
+    """
+    try:
+        document = loads(read_text(path))
+    except ValueError as error:
+        if isinstance(error, BadInput):
+            raise
+        raise BadInput(f"{path}: is not JSON; allowed: the .fit.json of a fit") from None
+    record = document.get("uncertainty") if isinstance(document, dict) else None
+    return uncertainty_of_record(record if isinstance(record, dict) else {}, str(path))
+
+
 def damper_of(path: Path, request: FitRequest) -> str:
     """Name or path of a request's damper; a path counts from the request's folder."""
     return str(path.parent / request.damper) if is_path(request.damper) else request.damper
@@ -79,14 +96,15 @@ def read_runs(path: Path, request: FitRequest, damper: Damper) -> DynoRuns:
     """Every run of the request at ``path``. Raises BadInput with the faults of all of them."""
     faults: list[str] = []
     runs: list[Run] = []
-    notes: list[str] = []
+    notes: dict[str, dict[str, None]] = {}
     strokes: list[Strokes] = []
     for number, wanted in enumerate(request.runs, start=1):
         where = f"{path} run {number} ({wanted.file})"
         try:
             found = read_strokes(path.parent / wanted.file, wanted)
             strokes.append(found)
-            notes += [f"{wanted.file}: {note}" for note in found.notes]
+            for note in found.notes:
+                notes.setdefault(note, {})[wanted.file] = None
             made = _runs_of(wanted, found, damper, path.parent)
         except BadInput as error:
             faults += [f"{where}: {fault}" for fault in error.faults]
@@ -96,7 +114,12 @@ def read_runs(path: Path, request: FitRequest, damper: Damper) -> DynoRuns:
     if faults:
         raise BadInput(dict.fromkeys(faults))
     files = tuple(dict.fromkeys(path.parent / wanted.file for wanted in request.runs))
-    return DynoRuns(tuple(runs), tuple(dict.fromkeys(notes)), files, tuple(strokes))
+    return DynoRuns(
+        tuple(runs),
+        tuple(f"{', '.join(names)}: {note}" for note, names in notes.items()),
+        files,
+        tuple(strokes),
+    )
 
 
 def read_strokes(path: str | Path, wanted: RunRequest) -> Strokes:
@@ -217,15 +240,15 @@ def _run_of(
     if fitted_clicks is None:
         fitted_clicks = valve.bleed.needle.clicks // 2 if valve.bleed.needle else 0
     curve = found.curves[direction]
-    many = wanted.circuit == "both"
     return Run(
-        f"{wanted.file}, {direction}" if many else wanted.file,
+        wanted.file,
         direction,
         _stack_of(wanted.stack, valve.fitted, folder),
         fitted_clicks if wanted.clicks is None else wanted.clicks,
         wanted.oil_temp_c,
         curve.velocity_m_s,
         curve.force_n,
+        curve.hysteresis_n,
         found.friction_n,
         found.gas_n,
         wanted.units_are_right,

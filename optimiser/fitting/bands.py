@@ -1,8 +1,8 @@
 """Prediction bands: what a stack may really do, by seeded Monte Carlo through the quick model.
 
 Every sample draws the damper's numbers (from the covariance of a fit), the thickness of every size
-of shim, the needle's play, the oil's temperature and one error of the model that all forces share. The
-quick model's small difference to the reported one is taken out by the ratio of both at the
+of shim, the needle's play, the oil's temperature and one error of the model that all forces share.
+The quick model's small difference to the reported one is taken out by the ratio of both at the
 nominal values.
 """
 
@@ -72,8 +72,8 @@ def force_bands(
 ) -> Bands:
     """5-95 % band of the force of ``stack`` at ``velocity_m_s`` (n,), m/s, rising.
 
-    ``clicks`` out from closed, None as fitted. The same ``seed`` gives the same samples; stacks of one
-    damper share the draws of the damper's numbers. Raises BadInput.
+    ``clicks`` out from closed, None as fitted. The same ``seed`` gives the same samples; stacks of
+    one damper share the draws of the damper's numbers. Raises BadInput.
     """
     if samples < 20:
         raise BadInput(f"samples is {samples}; allowed: 20 or more")
@@ -196,7 +196,8 @@ def sample_drops(
     """Pressure drop ``drops`` (s, n), Pa, of every sample at ``flows`` (n,), m3/s.
 
     ``thickness`` (s, shims) m, ``height`` (s,) of the seat m, ``pressures`` (k,) in the ports, Pa,
-    ``numbers`` (s, 8) fields of ValveNumbers, ``bleeds`` (s, 2). NaN where the shims did not settle.
+    ``numbers`` (s, 8) fields of ValveNumbers, ``bleeds`` (s, 2). NaN where the shims did not
+    settle.
     """
     entries = pressures.size
     edge, lift, stress = np.zeros(entries), np.zeros(entries), np.zeros(entries)

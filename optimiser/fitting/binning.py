@@ -10,7 +10,7 @@ from optimiser.hydraulics.lift import Floats
 BANDS = 24
 LEAST_IN_BAND = 3
 #: Slower than this share of the highest velocity, stick and reversal blur the force.
-SLOWEST_SHARE = 0.02
+SLOWEST_SHARE = 0.05
 
 
 class BandMeans(NamedTuple):

@@ -7,7 +7,7 @@ import numpy as np
 
 from optimiser.damper import Damper, Direction
 from optimiser.faults import BadInput
-from optimiser.fitting.estimate import LEAST_SHARE, Estimate, estimate, without
+from optimiser.fitting.estimate import Estimate, estimate, weight_of, without
 from optimiser.fitting.identify import Confusion, confused_names, confusions
 from optimiser.fitting.model import Model, Seen
 from optimiser.fitting.parameters import (
@@ -46,7 +46,7 @@ _PHYSICS = {CURTAIN: 0.61, PORTS: 0.72}
 class RunError:
     """How well one run is met: r.m.s. error of force over measured force, %, over its points.
 
-    ``start_percent`` with the numbers the fit began at, ``fitted_percent`` with all runs in the
+    ``before_percent`` with the damper file's own numbers, ``fitted_percent`` with all runs in the
     fit, ``left_out_percent`` fitted without this run (None: the other runs say nothing about this
     direction), ``middle_percent`` signed median of the fit. The worst twentieth of the points does
     not count.
@@ -58,7 +58,7 @@ class RunError:
     oil_temp_c: float
     points: int
     outliers: int
-    start_percent: float
+    before_percent: float
     fitted_percent: float
     middle_percent: float
     left_out_percent: float | None
@@ -71,7 +71,8 @@ class Calibration:
     ``damper`` is ``original`` with the values in; ``found`` the estimate; ``runs`` their errors;
     ``held`` numbers kept as they were because the runs cannot tell them; ``steady_n`` gas force in
     the runs; ``scatter_percent`` robust scatter of the points; ``left_out_percent`` r.m.s. over
-    the runs that could be left out: what to expect of a stack never measured (None: no run could).
+    the runs that could be left out (None: no run could), ``new_stack_percent`` over those of them
+    whose stack no other run has: what to expect of a stack never measured.
     """
 
     original: Damper
@@ -85,6 +86,7 @@ class Calibration:
     steady_n: float
     scatter_percent: float
     left_out_percent: float | None
+    new_stack_percent: float | None
     notes: tuple[str, ...]
 
 
@@ -272,7 +274,6 @@ def _conclude(
         _run_error(model, seen[k], predicted[k], found, _marks(seen, found, k), left[k])
         for k in range(len(seen))
     )
-    known = [percent for percent in left if percent is not None]
     calibrated = with_values(with_values(damper, _held_values(held, model)), values)
     return Calibration(
         original=damper,
@@ -285,9 +286,24 @@ def _conclude(
         held=tuple(held),
         steady_n=steady,
         scatter_percent=100.0 * found.scatter,
-        left_out_percent=float(np.sqrt(np.mean(np.square(known)))) if known else None,
+        left_out_percent=_together(left),
+        new_stack_percent=_together(
+            [p for p, s in zip(left, seen, strict=True) if _alone(s, seen)]
+        ),
         notes=tuple(notes + _limit_notes(found)),
     )
+
+
+def _together(percents: Sequence[float | None]) -> float | None:
+    """Root of the mean square of the known ones."""
+    known = [percent for percent in percents if percent is not None]
+    return float(np.sqrt(np.mean(np.square(known)))) if known else None
+
+
+def _alone(one: Seen, seen: Sequence[Seen]) -> bool:
+    """True when no other run has this one's stack in the same direction."""
+    key = (one.run.direction, one.run.stack)
+    return sum((item.run.direction, item.run.stack) == key for item in seen) == 1
 
 
 def _held_values(
@@ -322,17 +338,16 @@ def _marks(seen: Sequence[Seen], found: Estimate, place: int) -> int:
     return int(found.outliers[start : start + sizes[place]].sum())
 
 
-def relative_error(run: Run, predicted_n: Floats) -> Floats:
-    """Predicted less measured force over measured (n,); slow points over a share of the largest."""
-    return (predicted_n - run.force_n) / np.maximum(
-        np.abs(run.force_n), LEAST_SHARE * run.largest_n
-    )
+def relative_error(run: Run, predicted_n: Floats, steady_n: float) -> Floats:
+    """Predicted less measured force over the measured damping (n,); ``steady_n``: gas force in it,
+    positive where it adds."""
+    return (predicted_n - run.force_n) / weight_of(run.force_n, steady_n)
 
 
-def _rms_percent(run: Run, predicted_n: Floats) -> float:
-    """Root of the mean square of the relative errors, %; the worst twentieth of points left out, so
-    that one bad reading does not stand for the run."""
-    errors = np.sort(np.abs(relative_error(run, predicted_n)))
+def _rms_percent(relative: Floats) -> float:
+    """Root of the mean square of relative errors (n,), %; the worst twentieth of points left out,
+    so that one bad reading does not stand for the run."""
+    errors = np.sort(np.abs(relative))
     kept = errors[: max(1, errors.size - errors.size // 20)]
     return 100.0 * float(np.sqrt(np.mean(kept**2)))
 
@@ -346,7 +361,8 @@ def _run_error(
     left_out: float | None,
 ) -> RunError:
     run = seen.run
-    start = np.array([item.start for item in found.parameters])
+    steady = model.steady_of(run, found.values)
+    before = _own_values(model.damper, found, steady if run.direction == "compression" else -steady)
     return RunError(
         run.label,
         run.direction,
@@ -354,10 +370,20 @@ def _run_error(
         run.oil_temp_c,
         run.velocity_m_s.size,
         outliers,
-        _rms_percent(run, model.force_n(seen, start)),
-        _rms_percent(run, predicted),
-        100.0 * float(np.median(relative_error(run, predicted))),
+        _rms_percent(relative_error(run, model.force_n(seen, before), steady)),
+        _rms_percent(relative_error(run, predicted, steady)),
+        100.0 * float(np.median(relative_error(run, predicted, steady))),
         left_out,
+    )
+
+
+def _own_values(damper: Damper, found: Estimate, gas_n: float) -> Floats:
+    """The free numbers as the damper file has them (p,), but the gas force as it is in the runs."""
+    return np.array(
+        [
+            gas_n if item.key == GAS else value_of(damper, item.key, item.direction)
+            for item in found.parameters
+        ]
     )
 
 
@@ -372,4 +398,5 @@ def _left_out(model: Model, seen: Sequence[Seen], place: int, found: Estimate) -
         return None
     start = np.array([item.start for item in model.parameters])
     fitted = estimate(model, others, [found.values, start])
-    return _rms_percent(run, model.force_n(seen[place], fitted.values))
+    predicted = model.force_n(seen[place], fitted.values)
+    return _rms_percent(relative_error(run, predicted, model.steady_of(run, found.values)))

@@ -78,22 +78,20 @@ def _replaced(found: re.Match[str], change: Change) -> str:
     return f"{found['head']}{change.value}{' ' * room}# {remark}"
 
 
-def _with_table(
-    lines: list[str], places: list[Place | None], table: Place, new_line: str
-) -> list[str]:
+def _with_table(lines: list[str], places: list[Place], table: Place, new_line: str) -> list[str]:
     """A missing table, added behind the last line of its parent and its parent's other tables."""
-    parent = next(table[:k] for k in range(len(table) - 1, 0, -1) if table[:k] in places)
-    members = [n for n, place in enumerate(places) if place and place[: len(parent)] == parent]
+    parent = next((table[:k] for k in range(len(table) - 1, 0, -1) if table[:k] in places), ())
+    members = [n for n, place in enumerate(places) if place[: len(parent)] == parent]
     last = max(n for n in members if lines[n].strip() and not lines[n].lstrip().startswith("#"))
     header = ".".join(str(step) for step in table if isinstance(step, str))
     return [*lines[: last + 1], "", f"[{header}]", new_line, *lines[last + 1 :]]
 
 
-def _places(lines: Sequence[str]) -> list[Place | None]:
+def _places(lines: Sequence[str]) -> list[Place]:
     """The table each line belongs to; a line inside a multi-line list keeps its table."""
     here: Place = ()
     counts: dict[Place, int] = {}
-    places: list[Place | None] = []
+    places: list[Place] = []
     for line in lines:
         header = _HEADER.match(line)
         if header and "=" not in header[2] and '"' not in header[2]:

@@ -50,16 +50,13 @@ def drawn(
     items = [parameter(setup.damper, key, setup.direction) for key in keys]
     means = np.array([item.start for item in items])
     values = _normal(streams[0], means, covariance, samples)
-    for place, item in enumerate(items):
-        values[:, place] = np.clip(values[:, place], item.low, item.high)
-    place = {key: k for k, key in enumerate(keys)}
-    friction = np.full(samples + 1, setup.damper.friction_n)
-    if FRICTION in place:
-        friction = values[:, place[FRICTION]]
+    for number, item in enumerate(items):
+        values[:, number] = np.clip(values[:, number], item.low, item.high)
+    column = dict(zip(keys, values.T, strict=True))
     seat = setup.valve.seat
-    height = np.full(samples + 1, seat.height_mm if seat else 0.0)
-    if PRELOAD in place:
-        height = values[:, place[PRELOAD]]
+    usual = np.ones(samples + 1)
+    friction = column.get(FRICTION, setup.damper.friction_n * usual)
+    height = column.get(PRELOAD, (seat.height_mm if seat else 0.0) * usual)
     play = _even(streams[2], known.clicks_play, samples) if setup.clicks_range else 0.0
     span = _even(streams[3], known.oil_temp_span_c, samples)
     factor = np.exp(0.01 * known.model_percent * streams[4].standard_normal(samples))
@@ -69,7 +66,7 @@ def drawn(
         friction,
         1e-3 * height,
         1e-3 * _thicknesses(streams[1], stack, setup, known, samples),
-        np.clip(clicks + play, 0.0, setup.clicks_range) * np.ones(samples + 1),
+        np.clip(clicks + play, 0.0, setup.clicks_range) * usual,
         np.clip(setup.oil_temp_c + span, COLDEST_C, HOTTEST_C),
         np.concatenate([[1.0], factor]),
     )

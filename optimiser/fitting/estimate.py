@@ -20,7 +20,7 @@ from optimiser.fitting.model import Model, Seen, sensitivity
 from optimiser.fitting.parameters import GAS, Parameter, with_values
 from optimiser.hydraulics.lift import Floats
 
-#: Forces below this share of a run's largest count as if they were that large.
+#: Share of a run's largest force that joins the force an error is counted against.
 LEAST_SHARE = 0.05
 #: The robust loss bends at this many times the scatter.
 CUT = 2.0
@@ -76,12 +76,12 @@ class Estimate:
         ]
 
 
-def weights_of(seen: Sequence[Seen], forces: Sequence[Floats]) -> list[Floats]:
-    """Force each point's error is counted against, N: its own, at least a share of the largest."""
-    return [
-        np.maximum(np.abs(force), LEAST_SHARE * item.run.largest_n)
-        for item, force in zip(seen, forces, strict=True)
-    ]
+def weight_of(force_n: Floats, steady_n: float) -> Floats:
+    """Force (n,), N, each point's error is counted against: its damping, without the steady force
+    of the gas, joined by a share of the largest, as a load cell's own error does not shrink with
+    the force (root of the sum of squares)."""
+    damping = np.abs(force_n - steady_n)
+    return np.asarray(np.hypot(damping, LEAST_SHARE * damping.max()))
 
 
 def estimate(model: Model, seen: Sequence[Seen], starts: Sequence[Floats]) -> Estimate:
@@ -97,11 +97,11 @@ def estimate(model: Model, seen: Sequence[Seen], starts: Sequence[Floats]) -> Es
             f"the runs hold {points} points in all; allowed: at least {wanted + 2} to fit "
             f"{wanted} numbers, or fewer free numbers"
         )
-    first = weights_of(seen, [item.run.force_n for item in seen])
+    first = [weight_of(s.run.force_n, model.steady_of(s.run, starts[0])) for s in seen]
     ends = [_solve(model, seen, start, first, _FIRST_CUT) for start in starts]
     best = min(ends, key=lambda end: float(end.cost))
     scatter = _scatter(best.fun, wanted)
-    weights = weights_of(seen, [model.force_n(item, best.x) for item in seen])
+    weights = [weight_of(model.force_n(s, best.x), model.steady_of(s.run, best.x)) for s in seen]
     cut = CUT * max(scatter, _LEAST_SCATTER)
     final = _solve(model, seen, best.x, weights, cut)
     return _conclude(model, seen, final, weights, cut)

@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from optimiser.damper import Direction
-from optimiser.fitting.estimate import FLAT_SCALES, LEAST_SHARE, Estimate
+from optimiser.fitting.estimate import FLAT_SCALES, Estimate, weight_of
 from optimiser.fitting.model import Model, Seen, sensitivity
 from optimiser.fitting.parameters import KEYS, Parameter
 from optimiser.fitting.runs import Run
@@ -177,8 +177,8 @@ def _with_slopes(
     made = []
     for candidate in candidates:
         seen = model.prepare(candidate.run, candidate.stackless)
-        force = np.abs(model.force_n(seen, found.values))
-        weight = np.maximum(force, LEAST_SHARE * force.max())
+        steady = model.steady_of(candidate.run, found.values)
+        weight = weight_of(model.force_n(seen, found.values), steady)
         made.append((candidate, sensitivity(model, seen, found.values) * scale / weight[:, None]))
     return made
 

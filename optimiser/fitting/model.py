@@ -88,6 +88,11 @@ class Model:
         force += steady if run.direction == "compression" else -steady
         return np.minimum(force, LOCKED * run.largest_n)
 
+    def steady_of(self, run: Run, values: Floats) -> float:
+        """Gas force in a run, N, positive where it adds to the measured force."""
+        steady = self._numbers(run.direction, values)[2]
+        return steady if run.direction == "compression" else -steady
+
     def _table(self, seen: Seen, valve: Valve) -> LiftTable:
         if seen.stackless:
             return no_stack()

@@ -18,8 +18,10 @@ class Run:
     """Measured points of one stroke: ``velocity_m_s`` (n,) 0 or more, ``force_n`` (n,) positive
     where it resists; gas and friction are still in it.
 
-    ``clicks`` out from closed (0 without an adjuster), ``rest_n`` force at rest (N, None: not
-    known), ``trusted``: its units are not to be questioned.
+    ``clicks`` out from closed (0 without an adjuster); ``hysteresis_n`` (n,) width of the loop the
+    points are the middle of (NaN or None: not known); ``friction_n`` and ``gas_n`` as both strokes
+    of the file show them at rest (None: one stroke only); ``trusted``: its units are not to be
+    questioned.
     """
 
     label: str
@@ -29,6 +31,7 @@ class Run:
     oil_temp_c: float
     velocity_m_s: Floats
     force_n: Floats
+    hysteresis_n: Floats | None = None
     friction_n: float | None = None
     gas_n: float | None = None
     trusted: bool = False

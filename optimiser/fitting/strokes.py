@@ -93,9 +93,10 @@ def _one_stroke(velocity: Floats, force: Floats, gain: Floats, only: Direction |
         )
     flip = np.median(force) < 0.0
     curve = _curve(np.abs(velocity), -force if flip else force, gain, only)
-    notes = [f"every velocity has one sign: all of it is read as {only}"]
+    notes = [f"every velocity has one sign, read as {only}"]
     if flip:
         notes.append(f"{only} forces are recorded negative and were turned round")
+    notes += _loop_notes(only, curve, velocity.size)
     return Strokes({only: curve}, None, None, tuple(notes))
 
 
@@ -118,12 +119,28 @@ def _both_strokes(
     notes.append(f"positive velocity is read as {stroke}: {reason}")
     first, second = (with_plus, with_minus) if stroke == "compression" else (with_minus, with_plus)
     gas = steady if stroke == "compression" else -steady
-    return Strokes(
-        {"compression": first, "rebound": second},
-        0.5 * (rest_plus + rest_minus),
-        gas,
-        tuple(notes),
+    friction = 0.5 * (rest_plus + rest_minus)
+    notes.append(
+        f"drawn in a straight line to rest, the strokes show {friction:.0f} N of friction (with "
+        f"what the bleed adds) and {gas:.0f} N of gas"
     )
+    curves: dict[Direction, Curve] = {"compression": first, "rebound": second}
+    for name, curve in curves.items():
+        notes += _loop_notes(name, curve, velocity.size)
+    return Strokes(curves, friction, gas, tuple(notes))
+
+
+def _loop_notes(name: str, curve: Curve, samples: int) -> list[str]:
+    """What averaging a loop did: how many points are left, and how wide the loop is."""
+    known = curve.hysteresis_n[np.isfinite(curve.hysteresis_n)]
+    if curve.velocity_m_s.size == samples or not known.size:
+        return []
+    widest = float(known[np.argmax(np.abs(known))])
+    word = "more" if widest > 0.0 else "less"
+    return [
+        f"{name} averaged to {curve.velocity_m_s.size} points; the loop is up to "
+        f"{abs(widest):.0f} N wide ({word} force while the speed grows)"
+    ]
 
 
 def _which(

@@ -17,6 +17,7 @@ from optimiser.fitting.parameters import (
     KEYS,
     LOADED,
     PORTS,
+    PRELOAD,
     named_directions,
     parameter,
 )
@@ -40,8 +41,8 @@ Thickness = Tolerance | Literal["measured"]
 class Uncertainty:
     """Spread of everything a prediction rests on.
 
-    ``names`` of the uncertain numbers (as :attr:`Parameter.name`) with their ``covariance`` (p, p), each
-    in its own unit; their means are the damper's own values. ``model_percent``: error that all
+    ``names`` of the uncertain numbers (as :attr:`Parameter.name`) with their ``covariance`` (p, p),
+    each in its own unit; their means are the damper's own values. ``model_percent``: error that all
     forces share beyond those, one standard deviation. ``thickness``: class of the strip, or
     "measured"; None: the class of the steel. ``clicks_play``: either side, evenly spread.
     ``oil_temp_span_c``: either side of the setup's temperature, evenly spread.
@@ -67,7 +68,9 @@ class Uncertainty:
 
 def usual_uncertainty(setup: Setup) -> Uncertainty:
     """Spread for a damper never put on a dyno: round figures, common practice, no source."""
-    items = [parameter(setup.damper, key, setup.direction) for key in _UNFITTED]
+    seat = setup.valve.seat
+    keys = (*_UNFITTED, PRELOAD) if seat and seat.height_mm > 0.0 else _UNFITTED
+    items = [parameter(setup.damper, key, setup.direction) for key in keys]
     spreads = np.array([0.5 * item.scale for item in items])
     names = tuple(item.name for item in items)
     return Uncertainty(names, np.diag(spreads**2), UNFITTED_PERCENT)
@@ -76,7 +79,7 @@ def usual_uncertainty(setup: Setup) -> Uncertainty:
 def fitted_uncertainty(result: Calibration) -> Uncertainty:
     """Spread of a calibrated damper: the fit's covariance, and as error of the model what runs left
     out of the fit were missed by beyond the scatter of their points."""
-    missed = result.left_out_percent
+    missed = result.new_stack_percent or result.left_out_percent
     if missed is None:
         model = UNFITTED_PERCENT
     else:

@@ -65,9 +65,11 @@ def _heading(result: Calibration, names: Sequence[str]) -> list[str]:
             f"{run.points} points, r.m.s. error {run.fitted_percent:.1f} %"
         )
         lines.append(f"    {stack}")
-    left = result.left_out_percent
+    left, new = result.left_out_percent, result.new_stack_percent
     if left is not None:
         lines.append(f"  A run left out of the fit was predicted within {left:.1f} % (r.m.s.).")
+    if new is not None:
+        lines.append(f"  A stack that no other run has was predicted within {new:.1f} % (r.m.s.).")
     if not result.original.gas_in_force:
         lines.append(f"  Gas force in the runs, not part of this file: {result.steady_n:.1f} N.")
     lines += [f"  {doubt.sentence}." for doubt in (*result.held, *result.doubts)]
