@@ -74,11 +74,12 @@ class ShimState:
 class Prediction:
     """What a stack does; arrays (n,) over ``velocity_m_s``.
 
-    ``pressure_mpa`` drop over the searched valve, ``shim_pressure_mpa`` over its shims; ``lift_mm``
-    above the seat; ``bleed_share`` of the valve's oil, 0 to 1; ``force_closed_n`` and
-    ``force_open_n`` with the adjuster shut and fully open (equal without one; infinite where nothing
-    lets the oil through); ``rise_thicknesses`` edge rise over the face shim's thickness, beyond
-    RISE_LIMIT the model is not checked (``outside_model``); ``cavitation_m_s`` None: not in range.
+    ``pressure_mpa`` drop over the searched valve, ``shim_pressure_mpa`` over its shims;
+    ``lift_mm`` above the seat; ``bleed_share`` of the valve's oil, 0 to 1; ``force_closed_n`` and
+    ``force_open_n`` with the adjuster shut and fully open (equal without one; infinite where
+    nothing lets the oil through); ``rise_thicknesses`` edge rise over the face shim's thickness,
+    beyond RISE_LIMIT the model is not checked (``outside_model``); ``cavitation_m_s`` None: not
+    in range.
     """
 
     setup: Setup
@@ -252,7 +253,8 @@ def predict(
 ) -> Prediction:
     """Curve, lift and stress of ``stack`` in the searched valve, at the `reported` fidelity.
 
-    ``velocity_m_s`` (n,) above 0. ``clicks`` out from closed, by default as fitted. Raises BadInput.
+    ``velocity_m_s`` (n,) above 0. ``clicks`` out from closed, by default as fitted. Raises
+    BadInput.
     """
     velocity = np.atleast_1d(np.asarray(velocity_m_s, dtype=float))
     if not (velocity.size and np.all(np.isfinite(velocity)) and np.all(velocity > 0.0)):
@@ -330,8 +332,8 @@ def _warnings(
         )
     if curve.cavitation_m_s is not None:
         found.append(
-            f"cavitation from {curve.cavitation_m_s:.2f} m/s: the oil behind the piston would boil; "
-            "more gas pressure or softer valving is needed there"
+            f"cavitation from {curve.cavitation_m_s:.2f} m/s: the oil behind the piston would "
+            "boil; more gas pressure or softer valving is needed there"
         )
     if max(shim.utilisation for shim in shims) >= 1.0:
         found.append(

@@ -40,11 +40,12 @@ class Deflection:
     """What p pressures do to a stack of n shims (face first, without the clamp shim).
 
     ``edge_deflection_mm`` (p,): mid-plane rise of the face shim's edge above the clamp plane;
-    ``seat_lift_mm`` (p,): rise above the seat, 0 while closed (without a seat: rise at the
-    port ring's outer edge); ``clamp_moment_n`` (p, n): radial moment at the clamp, N mm/mm;
-    ``peak_stress_mpa`` (p, n): largest membrane + bending stress of each shim; ``peak_at_mm`` (p, n): its
-    diameter; ``rise_thicknesses`` (p,): edge rise over the face shim's own thickness, the largest of all
-    shims that reach it; ``outside_model`` (p,): the rise is beyond what the model was checked for.
+    ``seat_lift_mm`` (p,): rise above the seat, 0 while closed (without a seat: rise at the port
+    ring's outer edge); ``clamp_moment_n`` (p, n): radial moment at the clamp, N mm/mm;
+    ``peak_stress_mpa`` (p, n): largest membrane + bending stress of each shim; ``peak_at_mm`` (p,
+    n): its diameter; ``rise_thicknesses`` (p,): edge rise over the face shim's own thickness, the
+    largest of all shims that reach it; ``outside_model`` (p,): the rise is beyond what the model
+    was checked for.
     """
 
     pressure_mpa: Floats
@@ -97,13 +98,13 @@ def deflect(
 ) -> Deflection:
     """Lift, moments and stress of a stack under uniform pressure over the port ring.
 
-    ``shims``: ``(outer_mm, thickness_mm)`` face first, or ``(outer_mm, thickness_mm, inner_mm)`` for a
-    ring shim whose hole is wider than the clamp; a shim no wider than the clamp only fills height.
-    ``clamp_mm`` diameter of the clamp shim; ``port_inner_mm``, ``port_outer_mm`` diameters of the
-    pressed ring; ``pressures_mpa`` (p,) in any order; ``seat_mm`` diameter of the seat, raised by
-    ``seat_height_mm`` above the clamp plane (None: nothing to rest on); ``fidelity`` "linear" (small
-    deflections), "search" (stretched plates, explicit) or "reported" (stretched plates, fine).
-    Raises BadInput. Model and sources: see equilibrium.py and quick.py.
+    ``shims``: ``(outer_mm, thickness_mm)`` face first, or ``(outer_mm, thickness_mm, inner_mm)``
+    for a ring shim whose hole is wider than the clamp; a shim no wider than the clamp only fills
+    height. ``clamp_mm`` diameter of the clamp shim; ``port_inner_mm``, ``port_outer_mm``
+    diameters of the pressed ring; ``pressures_mpa`` (p,) in any order; ``seat_mm`` diameter of
+    the seat, raised by ``seat_height_mm`` above the clamp plane (None: nothing to rest on);
+    ``fidelity`` "linear" (small deflections), "search" (stretched plates, explicit) or "reported"
+    (stretched plates, fine). Raises BadInput. Model and sources: see equilibrium.py and quick.py.
     """
     pressures = np.atleast_1d(np.asarray(pressures_mpa, dtype=float))
     faults = _faults(shims, clamp_mm, port_inner_mm, port_outer_mm, pressures)
@@ -220,8 +221,8 @@ def _answer(question: _Pressed, pressures: Floats, fidelity: Fidelity) -> Deflec
 def _per_shim(
     question: _Pressed, groups: Floats, member: Ints, found: _Profiles
 ) -> tuple[Floats, Floats, Floats]:
-    """Clamp moment N, peak stress Pa and its radius m, each (p, n): a shim carries t^3 of its group's
-    bending and t of its membrane force."""
+    """Clamp moment N, peak stress Pa and its radius m, each (p, n): a shim carries t^3 of its
+    group's bending and t of its membrane force."""
     shape = (found.edge.size, member.size)
     moments, stress, places = np.zeros(shape), np.zeros(shape), np.full(shape, question.clamp)
     for shim, group in enumerate(member):

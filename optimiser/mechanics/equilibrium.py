@@ -4,9 +4,10 @@ The energy
 
     bending + membrane (von Karman) - pressure work + spring + contact
 
-is minimised by Newton's method, with a line search when it takes long. A contact that overlaps pushes back like a
-spring ten thousand times stiffer than the plates there (assembly.CONTACT_STIFFNESS): overlaps stay
-far below what matters, and closing a gap is continuous.
+is minimised by Newton's method, with a line search when it takes long. A contact that overlaps
+pushes back like a spring ten thousand times stiffer than the plates there
+(assembly.CONTACT_STIFFNESS): overlaps stay far below what matters, and closing a gap is
+continuous.
 """
 
 from typing import NamedTuple
@@ -22,7 +23,8 @@ from optimiser.mechanics.plates import back_substitute, factor, moments_at
 
 RELATIVE_TOLERANCE = 1e-8
 MOST_STEPS = 100
-#: First Newton steps are taken whole: the set of closed contacts settles faster than along a descent.
+#: First Newton steps are taken whole: the set of closed contacts settles faster than along a
+#: descent.
 FULL_STEPS = 20
 #: At rest every shim lies on the next one: gaps below this share of the span start as closed.
 TOUCHING = 1e-9
@@ -191,7 +193,7 @@ def _shorten(
     length = 1.0
     for _bisection in range(40):
         ahead = np.dot(work.gradient, direction)
-        if abs(ahead) <= 0.1 * slope or ahead > 0.0 and length == 1.0:
+        if abs(ahead) <= 0.1 * slope or (ahead > 0.0 and length == 1.0):
             return
         if ahead > 0.0:
             low = length

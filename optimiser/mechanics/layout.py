@@ -28,8 +28,9 @@ def group_shims(outer: Floats, thickness: Floats, hole: Floats) -> tuple[Floats,
     """Merge neighbours of equal diameter.
 
     ``outer`` radii (n,), ``thickness`` (n,), ``hole`` radii (n,) with 0 for a plain shim. Returns
-    ``groups`` (m, 6): edge radius, sum of t, sum of t^3, thickest t, inner radius and thickness of a
-    ring shim lying behind the group (0 when none), and ``member`` (n,): each shim's group (-1: ring).
+    ``groups`` (m, 6): edge radius, sum of t, sum of t^3, thickest t, inner radius and thickness
+    of a ring shim lying behind the group (0 when none), and ``member`` (n,): each shim's group
+    (-1: ring).
     """
     groups = np.zeros((outer.size, 6))
     member = np.full(outer.size, -1)

@@ -1,8 +1,8 @@
 """One annular plate, clamped at its inner radius and free at its outer edge: closed forms.
 
 Sign convention: loads, deflections and slopes are positive away from the seat; a moment that
-lifts the edge is positive. Lengths in any one unit, forces in N: results are for a bending stiffness
-D = 1 and scale with 1/D (moments do not depend on D).
+lifts the edge is positive. Lengths in any one unit, forces in N: results are for a bending
+stiffness D = 1 and scale with 1/D (moments do not depend on D).
 
 Source: S. Timoshenko and S. Woinowsky-Krieger, *Theory of Plates and Shells*, 2nd ed. (1959),
 art. 16-17: for a ring load the plate equation d/dr[(1/r) d(r w')/dr] = -V/D integrates in closed
@@ -83,7 +83,8 @@ def ring_moment(r: float, s: float, clamp: float, edge: float, poisson: float) -
 
 @kernel
 def slope_load_slope(r: float, s: float, clamp: float, edge: float, poisson: float) -> float:
-    """Slope at r under a unit slope load at s: the derivative of :func:`ring_slope` by s (D = 1)."""
+    """Slope at r under a unit slope load at s: the derivative of :func:`ring_slope` by s (D =
+    1)."""
     squared = clamp * clamp
     whole = (1.0 + poisson) * edge * edge + (1.0 - poisson) * squared
     inner = min(r, s)
@@ -111,8 +112,8 @@ def pressure_response(
 ) -> float:
     """Deflection (D = 1), or radial moment, at r under unit pressure between two radii.
 
-    The ring-load forms are integrated by Gauss-Legendre, split at r where they have a kink, which is
-    exact to rounding for any ring wider than a few per cent of its radius.
+    The ring-load forms are integrated by Gauss-Legendre, split at r where they have a kink, which
+    is exact to rounding for any ring wider than a few per cent of its radius.
     """
     total = 0.0
     start = max(inner, clamp)

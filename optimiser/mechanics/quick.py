@@ -1,20 +1,20 @@
-"""The `search` fidelity: one stack's lift and stress over pressure in some ten microseconds a point.
+"""The `search` fidelity: one stack's lift and stress in some ten microseconds a pressure.
 
-The same mathematics as the `reported` fidelity (stretched plates, unilateral contact), arranged for
-speed. The unknowns are the contact forces, at shim edges and a few radii more (tables.py); every plate
-answers them through tabulated responses. At each pressure three things are repeated until
-the lift settles:
+The same mathematics as the `reported` fidelity (stretched plates, unilateral contact), arranged
+for speed. The unknowns are the contact forces, at shim edges and a few radii more (tables.py);
+every plate answers them through tabulated responses. At each pressure three things are repeated
+until the lift settles:
 
 1. the membrane force of every plate is worked out from its last shape and becomes a slope load;
-2. a plate that stretches is stiffer: a share c of its bending stiffness is added to both sides of its
-   equation (left as stiffness, right as load on the last shape), which makes the repetition converge
-   without changing what it converges to;
+2. a plate that stretches is stiffer: a share c of its bending stiffness is added to both sides of
+   its equation (left as stiffness, right as load on the last shape), which makes the repetition
+   converge without changing what it converges to;
 3. the contact forces are found by principal pivoting: closed contacts that would pull are
    opened, open ones that would overlap are closed, all at once, and one at a time when that stops
    getting better.
 
-Sources: plates and membranes as in plate.py and membrane.py; block principal pivoting after
-J. J. Judice and F. M. Pires, "A block principal pivoting algorithm for large-scale strictly monotone
+Sources: plates and membranes as in plate.py and membrane.py; block principal pivoting after J. J.
+Judice and F. M. Pires, "A block principal pivoting algorithm for large-scale strictly monotone
 linear complementarity problems", Computers & Operations Research 21 (1994) [from memory].
 """
 
@@ -121,15 +121,14 @@ def bench(groups: int, nodes: int) -> Bench:
     contacts = groups * nodes + 2
     return Bench(
         np.zeros(nodes, np.int64), np.zeros(4, np.int64), np.zeros(groups, np.int64),
-        np.zeros(contacts, np.int64), np.zeros(contacts, np.int64),
-        np.zeros(contacts, np.int64), np.zeros(contacts), np.zeros(contacts),
-        np.zeros(contacts, np.int64), np.zeros(contacts), np.zeros(contacts, np.int64),
-        np.zeros(contacts, np.int64), np.zeros(contacts, np.int64), np.zeros(nodes, np.int64),
-        np.zeros(nodes), np.zeros((contacts, contacts)), np.zeros(contacts), np.zeros(groups), np.zeros(groups),
-        np.zeros((groups, nodes)), np.zeros((groups, POINTS)), np.zeros((groups, nodes)),
-        np.zeros((groups, POINTS)), np.zeros((groups, POINTS)), np.zeros((groups, nodes + 1)),
-        np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
-        np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
+        np.zeros(contacts, np.int64), np.zeros(contacts, np.int64), np.zeros(contacts, np.int64),
+        np.zeros(contacts), np.zeros(contacts), np.zeros(contacts, np.int64), np.zeros(contacts),
+        np.zeros(contacts, np.int64), np.zeros(contacts, np.int64), np.zeros(contacts, np.int64),
+        np.zeros(nodes, np.int64), np.zeros(nodes), np.zeros((contacts, contacts)),
+        np.zeros(contacts), np.zeros(groups), np.zeros(groups), np.zeros((groups, nodes)),
+        np.zeros((groups, POINTS)), np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
+        np.zeros((groups, POINTS)), np.zeros((groups, nodes + 1)), np.zeros((groups, nodes)),
+        np.zeros((groups, POINTS)), np.zeros((groups, nodes)), np.zeros((groups, POINTS)),
     )  # fmt: skip
 
 
@@ -325,8 +324,8 @@ def _gather(tables: Tables, layers: Layers, b: Bench) -> int:
 
 @inner
 def _solve(matrix: Floats, low: Ints, vector: Floats, n: int) -> bool:
-    """Cholesky solve with the lower half of ``matrix`` (n, n) from column ``low`` (n,) of each row on;
-    ``vector`` (n,) becomes the solution."""
+    """Cholesky solve with the lower half of ``matrix`` (n, n) from column ``low`` (n,) of each
+    row on; ``vector`` (n,) becomes the solution."""
     for i in range(n):
         for j in range(low[i], i + 1):
             total = matrix[i, j]
@@ -510,7 +509,8 @@ def _average(layers: Layers, b: Bench) -> None:
 def settle(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float, scale: float
 ) -> int:
-    """Equilibrium at one pressure, from the shapes in ``b``; rounds taken, -1 when none was found."""
+    """Equilibrium at one pressure, from the shapes in ``b``; rounds taken, -1 when none was
+    found."""
     for rounds in range(1, MOST_ROUNDS + 1):
         before = b.lift[0, b.reach[0] - 1]
         if rounds >= AVERAGED_FROM:
@@ -535,7 +535,7 @@ def _peak_stress(
     tables: Tables, layers: Layers, setting: Setting, b: Bench, pressure: float
 ) -> float:
     """Largest membrane + bending stress in any shim, Pa, as settled."""
-    plates, thick, cubed, thickest = layers.plate, layers.thick, layers.cubed, layers.thickest
+    plates, cubed, thickest = layers.plate, layers.cubed, layers.thickest
     pressed, moment, turned = tables.pressed_moment, tables.moment, tables.slope_load_moment
     membrane, nodes, theta, load = tables.membrane_edge, tables.nodes, b.theta, b.load
     fronts, backs, active, vector = b.front, b.back, b.active, b.vector
@@ -575,7 +575,8 @@ def advance(
     tables: Tables, layers: Layers, setting: Setting, pressures: Floats, p: int, ahead: float,
     b: Bench,
 ) -> tuple[int, float]:  # fmt: skip
-    """Settle at pressure p, carried on from the ones before; rounds, and the power law from here."""
+    """Settle at pressure p, carried on from the ones before; rounds, and the power law from
+    here."""
     face = layers.plate[0]
     tip_node = tables.edge_node[face]
     _start(layers, b, pressures, p, ahead)
@@ -605,7 +606,8 @@ def follow(
     """Follow a stack along ascending ``pressures`` (p,), Pa.
 
     Writes the face edge's rise ``edge`` (p,) m, the rise at the seat ``seat`` (p,) m, the largest
-    stress of any shim ``stress`` (p,) Pa and the force on the seat ``force`` (p,) N. Returns the rounds taken, -1 when a pressure did not settle.
+    stress of any shim ``stress`` (p,) Pa and the force on the seat ``force`` (p,) N. Returns the
+    rounds taken, -1 when a pressure did not settle.
     """
     lay_out(tables, layers, setting, b)
     total = 0

@@ -4,9 +4,9 @@ A drawer holds a few dozen diameters; under one clamp each of them is the same p
 stiffness. Its responses to ring loads at all radii that may matter, to the pressure and to membrane
 forces are tabulated once (D = 1), so that a stack is solved without a single logarithm.
 
-A membrane force F = r N_r acts on a plate with slope w' through the virtual work
-2 pi F w' (dw)': a load that turns rather than lifts, called a *slope load* here. Its responses are the
-derivatives of the ring-load responses with respect to the loaded radius.
+A membrane force F = r N_r acts on a plate with slope w' through the virtual work 2 pi F w' (dw)':
+a load that turns rather than lifts, called a *slope load* here. Its responses are the derivatives
+of the ring-load responses with respect to the loaded radius.
 """
 
 from math import pi
@@ -184,8 +184,8 @@ def tables_for(
 ) -> Tables:
     """Tables for plates of ``edges`` (d,) radii, ascending, beyond the ``clamp`` radius.
 
-    ``extra`` (e,) radii of ring shims' holes and edges; ``seat`` and ``spring`` radii, 0 for none. SI.
-    Radii closer than a thousandth of the free span share a node.
+    ``extra`` (e,) radii of ring shims' holes and edges; ``seat`` and ``spring`` radii, 0 for
+    none. SI. Radii closer than a thousandth of the free span share a node.
     """
     span = edges[-1] - clamp
     low, high = max(port[0], clamp), min(port[1], edges[-1])

@@ -93,7 +93,8 @@ def _copy(source: Floats, target: Floats) -> None:
 
 @step
 def _misfit(job: Job, desk: Desk, click: int) -> float:
-    """Weighted r.m.s. of force over wanted force less 1 at a click; leaves the points in the desk."""
+    """Weighted r.m.s. of force over wanted force less 1 at a click; leaves the points in the
+    desk."""
     drops_at(
         job.numbers, job.bleed_a[click], job.bleed_b[click], desk.pressures, desk.lift, job.flows,
         desk.drop, desk.shim_pressure, desk.lift_at,

@@ -1,7 +1,8 @@
-"""How good the search is, on the real model: `python -m tests.bench.quality [exact|recover|compare]`.
+"""How good the search is, on the real model: `python -m tests.bench.quality
+[exact|recover|compare]`.
 
-* exact: spaces that can be tried out completely; the front found with 5 % of the evaluations against
-  the exact one (hypervolume by moocore, best error), ten seeds each;
+* exact: spaces that can be tried out completely; the front found with 5 % of the evaluations
+  against the exact one (hypervolume by moocore, best error), ten seeds each;
 * recover: random buildable stacks of the workshop stock, their own predicted curve as target;
 * compare: hypervolume against random stacks and the library's own operators at equal evaluations.
 """
