@@ -18,6 +18,7 @@ from optimiser.cli.options import (
     SteelOption,
     VelocitiesOption,
 )
+from optimiser.cli.sheet_options import SheetOption, check_page_path, command_of, write_page
 from optimiser.faults import BadInput
 
 if TYPE_CHECKING:
@@ -33,6 +34,7 @@ FROM_SHIMS = "--shim"
 
 
 def curve(
+    context: typer.Context,
     damper: DamperOption = DEFAULT_DAMPER,
     circuit: Annotated[
         CircuitChoice | None,
@@ -63,6 +65,7 @@ def curve(
     steel: SteelOption = None,
     oil: OilOption = None,
     chart: ChartOption = None,
+    sheet: SheetOption = None,
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
@@ -75,15 +78,22 @@ def curve(
 
     if chart is not None:
         chart_format(chart)
+    if sheet is not None:
+        check_page_path(sheet, "--sheet")
     wanted = parse_velocities(velocities) if velocities is not None else None
     given = read_given(damper, steel, oil, oil_temp_c)
-    jobs = _jobs(given, circuit, stack or [], shim or [])
+    jobs = curve_jobs(given, circuit, stack or [], shim or [])
     check_clicks([setup for _label, setup, _stack in jobs], clicks)
     note_when_preparing(quiet)
-    results = _predict_all(jobs, wanted, clicks)
+    results = predict_all(jobs, wanted, clicks)
     if chart is not None:
         _write_chart(chart, results)
         note(f"chart written to {chart}", quiet)
+    if sheet is not None:
+        from optimiser.cli.sheet import sheets_of_curves
+
+        write_page(sheet, sheets_of_curves(results, given.files, command_of(context)))
+        note(f"bench sheets written to {sheet}", quiet)
     if json:
         _print_json(given, results, quiet)
     else:
@@ -93,7 +103,7 @@ def curve(
         show_curves(results, look_of(), quiet)
 
 
-def _jobs(
+def curve_jobs(
     given: "Given", circuit: CircuitChoice | None, stacks: list[str], shims: list[str]
 ) -> "list[tuple[str, Setup, Stack]]":
     """Label, setup and stack of every curve to compute. Raises BadInput with all faults."""
@@ -148,9 +158,10 @@ def _fitted(setup: "Setup") -> "Stack":
     return fitted
 
 
-def _predict_all(
+def predict_all(
     jobs: "list[tuple[str, Setup, Stack]]", wanted: list[float] | None, clicks: int | None
 ) -> "list[Named]":
+    """Every curve at the wanted velocities, m/s, or at the usual ones of its direction."""
     from optimiser.cli.inputs import USUAL_VELOCITIES
     from optimiser.prediction import predict
     from optimiser.report.curve import Named

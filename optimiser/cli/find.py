@@ -40,6 +40,7 @@ from optimiser.cli.options import (
     SteelOption,
     VelocitiesOption,
 )
+from optimiser.cli.sheet_options import SheetOption, check_page_path, command_of, write_page
 from optimiser.cli.wish_options import (
     DEFAULT_STOCK,
     CopyOption,
@@ -65,7 +66,7 @@ if TYPE_CHECKING:
     from optimiser.results import Answer, SavedOrder
 
 #: Options that may stand beside ``--again``: they do not change what is searched.
-_BESIDE_AGAIN = {"again", "workers", "chart", "json", "out", "quiet"}
+_BESIDE_AGAIN = {"again", "workers", "chart", "sheet", "json", "out", "quiet"}
 
 
 def find(
@@ -108,6 +109,7 @@ def find(
     again: AgainOption = None,
     out: OutFolderOption = None,
     chart: ChartOption = None,
+    sheet: SheetOption = None,
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
@@ -116,9 +118,8 @@ def find(
     With no options it solves the bundled example. What is wanted is said as in target. Ctrl-C
     ends the search and shows the best so far.
     """
-    from optimiser.cli.find_request import Asked, check_numbers, check_order, order_of
+    from optimiser.cli.find_request import Asked, check_numbers, order_of
     from optimiser.cli.inputs import parse_velocities
-    from optimiser.cli.progress import note_when_preparing
     from optimiser.cli.result_files import check_folder
     from optimiser.report.chart import chart_format
     from optimiser.results import read_result
@@ -126,6 +127,8 @@ def find(
 
     if chart is not None:
         chart_format(chart)
+    if sheet is not None:
+        check_page_path(sheet, "--sheet")
     if out is not None:
         check_folder(out)
     asked = Asked(
@@ -156,9 +159,12 @@ def find(
             resample=resample,
         )
         order = order_of(said, asked)
-    note_when_preparing(quiet)
-    check_order(order)
-    _answer(order, workers, out, chart, json, quiet)
+    answer = _answer(order, workers, out, chart, json, quiet)
+    if sheet is not None:
+        from optimiser.report.sheet_result import sheets_of, tuned_of
+
+        write_page(sheet, sheets_of(tuned_of(answer), command_of(context)))
+        note(f"bench sheets written to {sheet}", quiet)
 
 
 def _answer(
@@ -168,8 +174,10 @@ def _answer(
     chart: Path | None,
     json: bool,
     quiet: bool,
-) -> None:
+) -> "Answer":
     """Search, write the files asked for and show what was found."""
+    from optimiser.cli.find_request import check_buildable, check_within_reach
+    from optimiser.cli.progress import note_when_preparing
     from optimiser.cli.result_files import write_folder
     from optimiser.files import atomic_write_bytes
     from optimiser.report.chart import chart_format
@@ -177,6 +185,9 @@ def _answer(
     from optimiser.report.find_document import find_document
     from optimiser.report.look import look_of
 
+    check_buildable(order)
+    note_when_preparing(quiet)
+    check_within_reach(order)
     answer = _search(order, workers or _usual_workers(), quiet or json)
     if out is not None:
         for file in write_folder(out, answer, _chart(answer, "svg")):
@@ -190,6 +201,7 @@ def _answer(
             note("cut short by Ctrl-C: these are the best stacks so far", quiet)
     else:
         show_answer(answer, look_of(), quiet)
+    return answer
 
 
 def _search(order: "SavedOrder", workers: int, silent: bool) -> "Answer":
@@ -260,7 +272,7 @@ def _check_beside_again(context: typer.Context) -> None:
     if given:
         raise BadInput(
             f"--again repeats a saved search, which {', '.join(given)} would change; allowed "
-            "beside it: --workers, --out, --chart, --json, --quiet"
+            "beside it: --workers, --out, --chart, --sheet, --json, --quiet"
         )
 
 

@@ -153,18 +153,24 @@ def _read(asked: Asked) -> tuple[Given, Stock]:
     return given, stock
 
 
-def check_order(order: SavedOrder) -> None:
-    """Raise NothingBuildable or BadInput where a search would be in vain."""
-    barred: list[str] = []
-    far: list[str] = []
+def check_buildable(order: SavedOrder) -> None:
+    """Raise NothingBuildable, with the rule that stops it, where no stack can be built at all."""
+    barred = []
     for one in order.orders():
         reason = _nothing_fits(one, order) or _nothing_possible(one)
         if reason is not None:
             barred.append(f"{one.setup.direction}: {reason}")
-        elif (sentence := _far_outside(one)) is not None:
-            far.append(f"{one.target.origin}, {one.setup.direction}: {sentence}")
     if barred:
         raise NothingBuildable("\n".join(barred))
+
+
+def check_within_reach(order: SavedOrder) -> None:
+    """Raise BadInput for a target so far off that it must be a mistake."""
+    far = []
+    for one in order.orders():
+        sentence = _far_outside(one)
+        if sentence is not None:
+            far.append(f"{one.target.origin}, {one.setup.direction}: {sentence}")
     if far:
         raise BadInput(far)
 

@@ -1,7 +1,9 @@
 """What a long search shows on a terminal, and what Ctrl-C does to it."""
 
+import os
 import signal
 import threading
+from collections.abc import Callable
 from pathlib import Path
 from time import perf_counter
 from types import FrameType, TracebackType
@@ -14,10 +16,11 @@ from rich.text import Text
 from optimiser.cli.notes import note
 from optimiser.search.budget import Progress
 
-PREPARING = "preparing the search: this happens once and takes a minute or two ..."
+PREPARING = "preparing the search: this happens once and takes about a minute ..."
 STOPPING = "stopping; the best so far follows (Ctrl-C again leaves at once)"
 #: Seconds between two changes of the line.
 _BETWEEN = 0.2
+_STDERR = 2
 
 
 def note_when_preparing(quiet: bool = False) -> None:
@@ -49,6 +52,7 @@ class Interrupts:
     def __init__(self) -> None:
         self.asked = False
         self.heeded = False
+        self.announce: Callable[[], None] = _silently
         self._tried = 0
         self._before: object = None
 
@@ -64,6 +68,7 @@ class Interrupts:
     def _first(self, _number: int, _frame: FrameType | None) -> None:
         self.asked = True
         signal.signal(signal.SIGINT, signal.default_int_handler)
+        self.announce()
 
     def saw(self, told: Progress) -> None:
         """Take note of how many stacks were tried."""
@@ -76,6 +81,10 @@ class Interrupts:
         return self.heeded and self._tried > 0
 
 
+def _silently() -> None:
+    """Say nothing."""
+
+
 class ProgressLine:
     """One line on stderr that is kept up to date and gone at the end; nothing off a terminal.
 
@@ -84,9 +93,8 @@ class ProgressLine:
 
     def __init__(self, interrupts: Interrupts, evaluations: int, quiet: bool) -> None:
         self._interrupts = interrupts
-        self._most = evaluations
+        self._most = evaluations + evaluations // 5  # the local pass on top
         self._quiet = quiet
-        self._told_stopping = False
         self._clock = _Clock()
         self._shown = 0.0
         console = Console(stderr=True, markup=False, emoji=False, highlight=False)
@@ -95,6 +103,8 @@ class ProgressLine:
         self._on = terminal
 
     def __enter__(self) -> Self:
+        if not self._quiet:
+            self._interrupts.announce = self._say_stopping
         if self._on:
             self._live.start()
         return self
@@ -113,17 +123,14 @@ class ProgressLine:
         self._interrupts.saw(told)
         self._clock.saw(told)
         now = perf_counter()
-        if self._interrupts.asked and not self._told_stopping:
-            self._told_stopping = True
-            if self._on:
-                self._live.console.print(Text(STOPPING))
-            else:
-                note(STOPPING, self._quiet)
-        elif not self._on or now - self._shown < _BETWEEN:
-            return
-        if self._on:
+        if self._on and now - self._shown >= _BETWEEN:
             self._shown = now
             self._live.update(Text(progress_text(told, self._left(told))), refresh=True)
+
+    def _say_stopping(self) -> None:
+        """Written past Python's buffers: a signal may come while those are being written."""
+        clear = "\r\x1b[2K" if self._on else ""
+        os.write(_STDERR, f"{clear}{STOPPING}\n".encode())
 
     def _left(self, told: Progress) -> float | None:
         """Seconds left at most; not known for a space that is tried out whole."""

@@ -12,7 +12,7 @@ from optimiser.report.cautions import CAUTION
 from optimiser.report.curve_line import CurveLine, Panel
 from optimiser.report.find_tables import envelope_table, ranked_table, stacks_side_by_side
 from optimiser.report.look import Look
-from optimiser.report.paragraph import paragraph
+from optimiser.report.paragraph import kept, paragraph
 from optimiser.report.small_chart import small_chart
 from optimiser.report.tables import stack_table
 from optimiser.report.target import outside_lines
@@ -25,6 +25,8 @@ from optimiser.wanted.bands import band_edges_m_s
 
 #: Up to so many points beyond a limit are named one by one, more are gathered by reason.
 NAMED_ONE_BY_ONE = 10
+#: An error above this, %, is worth a word on its reason; a rise above this share of the limit too.
+FAR_OFF_PERCENT, NEAR_LIMIT = 5.0, 0.9
 #: Best stacks in a chart.
 CHARTED = 3
 
@@ -61,8 +63,8 @@ def find_report(answer: Answer, look: Look, quiet: bool) -> Iterable[RenderableT
         yield ""
     for line in _about_both(answer, quiet):
         yield from paragraph(line, look, "yellow" if line.startswith("note:") else "")
-    yield from paragraph(statistics(answer), look)
     if not quiet:
+        yield from paragraph(statistics(answer), look)
         yield ""
         yield from paragraph(CAUTION, look, "italic")
 
@@ -174,6 +176,7 @@ def _legend(found: Found) -> Iterable[str]:
     yield (
         f"error: r.m.s. over the points; low up to {low:.2g} m/s, high from {mid:.2g} m/s. util.: "
         "stress over what the steel endures, ! from 1 on. variants: near-twins not listed."
+        + (" changed: shims taken out plus shims put in." if found.order.fitted else "")
     )
 
 
@@ -195,8 +198,28 @@ def _best(found: Found, best: Prediction, look: Look) -> Iterable[RenderableType
         f"{RISE_LIMIT:g}).",
         look,
     )
-    for warning in best.warnings:
-        yield from paragraph(f"warning: {warning}", look, "yellow")
+    for line in _advice(found, best):
+        yield from paragraph(line, look, "yellow")
+
+
+def _advice(found: Found, best: Prediction) -> Iterable[str]:
+    yield from (f"warning: {warning}" for warning in best.warnings)
+    proposal = found.proposals[0]
+    wide = proposal.error_percent > FAR_OFF_PERCENT
+    firm = float(np.mean(found.order.target.relative(proposal.force_n))) > 0.0
+    if wide and firm and NEAR_LIMIT * RISE_LIMIT < proposal.rise <= RISE_LIMIT:
+        yield (
+            "note: stack 1 is firmer than wanted and bends as far as the model is checked; softer "
+            "stacks lie outside the model and come last"
+        )
+    first, last = found.order.click_range or (0, 0)
+    full = best.setup.clicks_range
+    bound = (best.clicks == last < full) or (best.clicks == first > 0)
+    if first < last and bound:
+        yield (
+            f"note: stack 1 has its best click at the end of those allowed; --click-range 0-{full} "
+            "may come nearer"
+        )
 
 
 def _exchange(fitted: Stack, proposal: Proposal) -> str:
@@ -205,7 +228,7 @@ def _exchange(fitted: Stack, proposal: Proposal) -> str:
     if not out and not into:
         return "Revalve: the shims stay as they are; set their order and the clicks."
     parts = [
-        f"{what} {', '.join(str(group) for group in groups)}"
+        f"{what} {', '.join(kept(str(group)) for group in groups)}"
         for what, groups in (("take out", out), ("put in", into))
         if groups
     ]

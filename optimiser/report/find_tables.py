@@ -27,14 +27,14 @@ def ranked_table(found: Found, look: Look) -> Table:
     if len(headings) > 12:
         table.padding = (0, 0, 0, 0)
     for place, proposal in enumerate(found.proposals, start=1):
-        cells = _ranked_cells(place, proposal)
+        cells = _ranked_cells(place, proposal, found.order.setup.clicks_range > 0)
         cells += [Text(str(proposal.changed))] if revalve else []
         cells += [Text("outside" * proposal.outside_model, style="yellow")] if marked else []
         table.add_row(*cells)
     return table
 
 
-def _ranked_cells(place: int, proposal: Proposal) -> list[Text]:
+def _ranked_cells(place: int, proposal: Proposal, adjuster: bool) -> list[Text]:
     bands = proposal.bands
     worn = proposal.utilisation >= 1.0
     return [
@@ -48,7 +48,7 @@ def _ranked_cells(place: int, proposal: Proposal) -> list[Text]:
         Text(str(proposal.parts)),
         Text(str(proposal.sizes)),
         Text(f"{proposal.utilisation:.2f}{'!' if worn else ' '}", style="bold red" * worn),
-        Text(str(proposal.clicks)),
+        Text(str(proposal.clicks) if adjuster else "-"),
         Text(f"{proposal.stack.height_mm:.2f}"),
         Text(str(proposal.variants)),
     ]

@@ -4,20 +4,21 @@ Lengths of the drawing are in units of a view box ``WIDTH`` wide; mm are of the 
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 from optimiser.report.sheet import Piston, Step
+from optimiser.stack import Shim
 
 WIDTH = 100.0
 #: Room the labels take at the right, and the axis of the post.
-_AXIS = 41.5
-_HALF = 24.0
-_LABELS = 70.0
+_AXIS = 42.5
+_HALF = 23.5
+_LABELS = 70.5
 _CALLS = 15.5
 _FACE = 17.0
 _SLAB = 8.5
 _PITCH = 5.9
-_LEAST_STACK, _TALLEST_STACK = 30.0, 62.0
+_LEAST_STACK, _TALLEST_STACK = 30.0, 56.0
 _LONGEST_BIN = 22
 
 Points = tuple[tuple[float, float], ...]
@@ -82,7 +83,8 @@ class Section:
     text: float
     exaggeration: float
     preload_mm: float
-    says: str = field(default="")
+    ringed: bool
+    says: str
 
 
 @dataclass(frozen=True)
@@ -97,28 +99,34 @@ class _Scale:
     def half(self, diameter_mm: float) -> float:
         return 0.5 * diameter_mm * self.across
 
-    def bent(self, diameter_mm: float) -> float:
-        """How far a dished seat holds a shim away from the clamp plane at rest (a straight line)."""
-        piston = self.piston
-        free = max(piston.seat_mm - self.clamp_mm, 1e-9)
+    def bent(self, diameter_mm: float, rings: Sequence[Shim]) -> float:
+        """How far a shim is held off the clamp plane at rest by a dished seat and ring shims.
+
+        Straight lines from the clamp: the true shape is curved.
+        """
         reach = max(diameter_mm - self.clamp_mm, 0.0)
-        return piston.seat_height_mm * self.along * reach / free
+        seat = self.piston.seat_mm - self.clamp_mm
+        raised = self.piston.seat_height_mm * reach / max(seat, 1e-9)
+        for ring in rings:
+            raised += ring.thickness_mm * reach / ((ring.inner_mm or 0.0) - self.clamp_mm)
+        return raised * self.along
 
 
 def section_of(piston: Piston, steps: Sequence[Step]) -> Section:
     """The section of a stack under its piston, face first from the top."""
     widest = max([piston.seat_mm + piston.land_mm, *(step.outer_mm for step in steps)])
-    total = sum(step.quantity * step.shim.thickness_mm for step in steps)
-    room = min(max(_PITCH * len(steps), _LEAST_STACK), _TALLEST_STACK)
+    plain = [step for step in steps if step.role != "ring"]
+    total = sum(step.quantity * step.shim.thickness_mm for step in plain)
+    room = min(max(0.95 * _PITCH * len(steps), _LEAST_STACK), _TALLEST_STACK)
     across = 2.0 * _HALF / widest
     scale = _Scale(across, room / total, piston, steps[-1].outer_mm)
-    tops = _tops(steps, scale)
-    ends = _edge_middles(steps, tops, scale)
+    placed = _placed(steps, scale)
+    ends = _edge_middles(placed, scale)
     height = _FACE + room + 11.0
     pitch = min(_PITCH, (height - 8.0) / max(len(steps), 1))
     shapes = [*_piston_shapes(scale)]
-    for step, top in zip(steps, tops, strict=True):
-        shapes += _step_shapes(step, top, scale)
+    for one in placed:
+        shapes += _step_shapes(one, scale)
     bottom = _FACE + room
     clamp = scale.half(steps[-1].outer_mm)
     seat = scale.half(piston.seat_mm)
@@ -131,28 +139,46 @@ def section_of(piston: Piston, steps: Sequence[Step]) -> Section:
         dimensions=(
             Dimension(4.6, _AXIS - seat, _AXIS + seat, f"seat \u2300 {piston.seat_mm:g}"),
             Dimension(
-                bottom + 6.2, _AXIS - clamp, _AXIS + clamp, f"clamp \u2300 {steps[-1].outer_mm:g}"
+                bottom + 7.6, _AXIS - clamp, _AXIS + clamp, f"clamp \u2300 {steps[-1].outer_mm:g}"
             ),
         ),
-        post=(_AXIS - scale.half(piston.post_mm), 6.4, 2 * scale.half(piston.post_mm), bottom - 3.4),
+        post=(
+            _AXIS - scale.half(piston.post_mm),
+            6.4,
+            2 * scale.half(piston.post_mm),
+            bottom - 3.2,
+        ),
         ports=tuple(_port_middles(scale)),
         face_y=_FACE,
         text=min(3.3, 0.58 * pitch),
         exaggeration=scale.along / scale.across,
         preload_mm=piston.seat_height_mm,
+        ringed=len(plain) < len(steps),
         says=_in_words(piston, steps),
     )
 
 
-def _tops(steps: Sequence[Step], scale: _Scale) -> list[float]:
-    """Upper edge of every group at the post; a ring shim lies around the groups behind it."""
-    tops = []
-    along = 0.0
+@dataclass(frozen=True)
+class _Placed:
+    """A group with its upper edge at the post, and the ring shims in front of it."""
+
+    step: Step
+    top: float
+    rings: tuple[Shim, ...]
+
+
+def _placed(steps: Sequence[Step], scale: _Scale) -> list[_Placed]:
+    """Every group in its place; a ring shim takes no height at the post."""
+    placed: list[_Placed] = []
+    rings: tuple[Shim, ...] = ()
+    height = 0.0
     for step in steps:
-        tops.append(_FACE + along * scale.along)
-        if step.role != "ring":
-            along += step.quantity * step.shim.thickness_mm
-    return tops
+        placed.append(_Placed(step, _FACE + height * scale.along, rings))
+        if step.role == "ring":
+            rings += (step.shim,) * step.quantity
+        else:
+            height += step.quantity * step.shim.thickness_mm
+    return placed
 
 
 def _piston_shapes(scale: _Scale) -> list[Shape]:
@@ -178,15 +204,16 @@ def _piston_shapes(scale: _Scale) -> list[Shape]:
     return shapes
 
 
-def _step_shapes(step: Step, top: float, scale: _Scale) -> list[Shape]:
-    """Every piece of a group, both halves, bent as a dished seat holds it at rest."""
+def _step_shapes(placed: _Placed, scale: _Scale) -> list[Shape]:
+    """Every piece of a group, both halves, bent as it lies at rest."""
+    step = placed.step
     thick = step.shim.thickness_mm * scale.along
     hole = step.shim.inner_mm or scale.piston.post_mm
     diameters = [hole, max(hole, scale.clamp_mm), step.outer_mm]
     shapes = []
     for piece in range(step.quantity):
-        y = top + piece * thick
-        upper = [(scale.half(d), y + scale.bent(d)) for d in diameters]
+        y = placed.top + piece * thick
+        upper = [(scale.half(d), y + scale.bent(d, placed.rings)) for d in diameters]
         lower = [(x, y_upper + thick) for x, y_upper in reversed(upper)]
         outline = tuple(upper + lower)
         shapes += [Shape(_beside(outline, side), step.role) for side in (-1.0, 1.0)]
@@ -202,19 +229,14 @@ def _port_middles(scale: _Scale) -> list[tuple[float, float]]:
     return [(_AXIS - middle, _FACE), (_AXIS + middle, _FACE)]
 
 
-def _edge_middles(
-    steps: Sequence[Step], tops: Sequence[float], scale: _Scale
-) -> list[tuple[float, float]]:
+def _edge_middles(placed: Sequence[_Placed], scale: _Scale) -> list[tuple[float, float]]:
     """Distance from the axis and height of every group's edge, half-way through the group."""
-    return [
-        (
-            scale.half(step.outer_mm),
-            top
-            + 0.5 * step.quantity * step.shim.thickness_mm * scale.along
-            + scale.bent(step.outer_mm),
-        )
-        for step, top in zip(steps, tops, strict=True)
-    ]
+    ends = []
+    for one in placed:
+        outer = one.step.outer_mm
+        half_way = 0.5 * one.step.quantity * one.step.shim.thickness_mm * scale.along
+        ends.append((scale.half(outer), one.top + half_way + scale.bent(outer, one.rings)))
+    return ends
 
 
 def _labels(
@@ -229,9 +251,7 @@ def _labels(
     return labels
 
 
-def _calls(
-    steps: Sequence[Step], ends: Sequence[tuple[float, float]], height: float
-) -> list[Call]:
+def _calls(steps: Sequence[Step], ends: Sequence[tuple[float, float]], height: float) -> list[Call]:
     special = [
         (_words_of(step), x, y)
         for step, (x, y) in zip(steps, ends, strict=True)
@@ -239,7 +259,7 @@ def _calls(
     ]
     places = spread_out([y for _words, _x, y in special], 7.0, 4.0, height - 5.0)
     return [
-        Call(words, place, ((_CALLS + 0.8, place), (_AXIS - _HALF - 1.2, y), (_AXIS - x - 0.3, y)))
+        Call(words, place, ((_CALLS + 0.8, place), (_AXIS - _HALF - 1.0, y), (_AXIS - x - 0.3, y)))
         for (words, x, y), place in zip(special, places, strict=True)
     ]
 
@@ -253,18 +273,20 @@ def _words_of(step: Step) -> tuple[str, ...]:
 
 
 def spread_out(wanted: Sequence[float], pitch: float, low: float, high: float) -> list[float]:
-    """Places near the wanted ones (n,), rising and at least ``pitch`` apart, between two bounds."""
-    order = sorted(range(len(wanted)), key=lambda i: (wanted[i], i))
-    placed = [0.0] * len(wanted)
-    floor = low
-    for i in order:
-        placed[i] = max(wanted[i], floor)
-        floor = placed[i] + pitch
-    ceiling = high
-    for i in reversed(order):
-        placed[i] = min(placed[i], ceiling)
-        ceiling = placed[i] - pitch
-    return placed
+    """Places as near as can be to the wanted ones (n,), in their order, ``pitch`` apart.
+
+    Between two bounds. Neighbours that come too close become one block around their mean.
+    """
+    blocks: list[tuple[float, int]] = []
+    for place, y in enumerate(wanted):
+        mean, count = y - place * pitch, 1
+        while blocks and blocks[-1][0] > mean:
+            before, size = blocks.pop()
+            mean, count = (mean * count + before * size) / (count + size), count + size
+        blocks.append((mean, count))
+    top = max(low, high - (len(wanted) - 1) * pitch)
+    starts = [min(max(mean, low), top) for mean, count in blocks for _ in range(count)]
+    return [start + place * pitch for place, start in enumerate(starts)]
 
 
 def shortened(text: str, longest: int) -> str:

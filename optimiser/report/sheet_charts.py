@@ -6,8 +6,6 @@ from html import escape
 from io import StringIO
 from typing import Any
 
-import numpy as np
-
 from optimiser.report.chart import STYLES, draw_panel
 from optimiser.report.curve_line import Panel
 from optimiser.report.sheet import Opening, Sheet
@@ -26,7 +24,7 @@ _SETTINGS = {
 }
 
 
-def force_chart(sheet: Sheet, prefix: str, width_mm: float = 118.0, height_mm: float = 62.0) -> str:
+def force_chart(sheet: Sheet, prefix: str, width_mm: float = 118.0, height_mm: float = 56.0) -> str:
     """Force over velocity: wanted, predicted, click range, spread and measured runs."""
 
     def draw(axes: Any) -> None:
@@ -42,7 +40,7 @@ def force_chart(sheet: Sheet, prefix: str, width_mm: float = 118.0, height_mm: f
 
 
 def lift_chart(
-    opening: Opening, prefix: str, width_mm: float = 70.0, height_mm: float = 30.0
+    opening: Opening, prefix: str, width_mm: float = 70.0, height_mm: float = 25.0
 ) -> str:
     """Lift above the seat over velocity."""
 
@@ -54,7 +52,7 @@ def lift_chart(
 
 
 def share_chart(
-    opening: Opening, prefix: str, width_mm: float = 70.0, height_mm: float = 30.0
+    opening: Opening, prefix: str, width_mm: float = 70.0, height_mm: float = 25.0
 ) -> str:
     """Which way the oil goes, % of the valve's oil: bleed below, shims above."""
 
@@ -69,9 +67,6 @@ def share_chart(
             hatch="//////",
             linewidth=1.0,
         )
-        axes.text(0.97, 0.86, "past the shims", ha="right", transform=axes.transAxes)
-        box = {"facecolor": "white", "edgecolor": "none", "pad": 1.0}
-        axes.text(0.03, 0.1, "through the bleed", transform=axes.transAxes, bbox=box)
         axes.set_ylim(0.0, 100.0)
         _finish(axes, opening, "oil, %")
 
@@ -141,10 +136,11 @@ def _svg(
     import matplotlib as mpl
     from matplotlib.backends.backend_svg import FigureCanvasSVG
     from matplotlib.figure import Figure
+    from matplotlib.layout_engine import ConstrainedLayoutEngine
 
     with mpl.rc_context({**_SETTINGS, "svg.hashsalt": prefix}):
-        figure = Figure(figsize=(width_mm * _MM, height_mm * _MM), layout="constrained")
-        figure.get_layout_engine().set(w_pad=0.01, h_pad=0.01)
+        layout = ConstrainedLayoutEngine(w_pad=0.01, h_pad=0.01)
+        figure = Figure(figsize=(width_mm * _MM, height_mm * _MM), layout=layout)
         FigureCanvasSVG(figure)
         draw(figure.add_subplot())
         file = StringIO()
@@ -152,7 +148,7 @@ def _svg(
     return _inline(file.getvalue(), says, prefix)
 
 
-_NOTHING_ABOUT_IT = {key: None for key in ("Date", "Creator", "Format", "Type")}
+_NOTHING_ABOUT_IT = dict.fromkeys(("Date", "Creator", "Format", "Type"))
 
 
 def _inline(svg: str, says: str, prefix: str) -> str:
@@ -164,6 +160,6 @@ def _inline(svg: str, says: str, prefix: str) -> str:
     body = re.sub(r' id="', f' id="{prefix}-', body)
     body = re.sub(r'href="#', f'href="#{prefix}-', body)
     body = re.sub(r"url\(#", f"url(#{prefix}-", body)
-    return f'{head} role="img" aria-label="{escape(says)}">{body}'
-
-
+    return (
+        f'{head} preserveAspectRatio="xMinYMin meet" role="img" aria-label="{escape(says)}">{body}'
+    )

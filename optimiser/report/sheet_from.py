@@ -1,17 +1,16 @@
 """From predictions and search results to bench sheets."""
 
-from collections.abc import Sequence
 from dataclasses import dataclass, field
 from importlib.metadata import PackageNotFoundError, version
 
 import numpy as np
 
 from optimiser.prediction import Prediction, Setup, predict
-from optimiser.report.curve import lines_of
-from optimiser.report.curve import Named
+from optimiser.report.curve import Named, lines_of
 from optimiser.report.curve_line import CurveLine, Floats
 from optimiser.report.sheet import (
     Errors,
+    Exchange,
     Fact,
     ForceRow,
     Opening,
@@ -19,7 +18,7 @@ from optimiser.report.sheet import (
     Sheet,
     Source,
 )
-from optimiser.report.sheet_steps import Drawer, build_steps, exchange_of, shortages
+from optimiser.report.sheet_steps import Drawer, build_steps, shortages
 from optimiser.stack import Stack
 from optimiser.wanted.bands import band_errors
 from optimiser.wanted.target import Target
@@ -30,7 +29,7 @@ _SMOOTH = 41
 
 @dataclass(frozen=True, eq=False)
 class About:
-    """What a prediction does not know: names, target, drawer, fitted stack, measured runs.
+    """What a prediction does not know: names, target, drawer, exchange, measured runs.
 
     ``nominal`` the stack as written on the bins where the prediction's is as measured; ``facts``
     on rider, frame and feel; ``warnings`` besides the prediction's own; ``spread_n`` (low, high)
@@ -42,7 +41,7 @@ class About:
     target: Target | None = None
     nominal: Stack | None = None
     drawer: Drawer | None = None
-    fitted: Stack | None = None
+    exchange: Exchange | None = None
     facts: tuple[Fact, ...] = ()
     measured: tuple[CurveLine, ...] = ()
     warnings: tuple[str, ...] = ()
@@ -70,7 +69,7 @@ def sheet_of(seen: Prediction, about: About) -> Sheet:
         source=about.source,
         stock_name=about.drawer.name if about.drawer else None,
         errors=_errors(seen, about.target),
-        exchange=exchange_of(about.fitted, stack) if about.fitted else None,
+        exchange=about.exchange,
         warnings=(*shortages(stack, about.drawer), *seen.warnings, *about.warnings),
         spread_n=about.spread_n,
     )
@@ -155,13 +154,3 @@ def _errors(seen: Prediction, target: Target | None) -> Errors | None:
         bands.low_to_m_s,
         bands.mid_to_m_s,
     )
-
-
-def numbered(count: int, place: int) -> str:
-    """Which of several proposals a sheet is for."""
-    return f"proposal {place + 1} of {count}" if count > 1 else ""
-
-
-def joined(parts: Sequence[str]) -> str:
-    """The parts that say something, on one line."""
-    return " \u00b7 ".join(part for part in parts if part)

@@ -8,18 +8,20 @@ from typing import Any
 
 from markupsafe import Markup
 
-from optimiser.report.cautions import CAUTIONS
-from optimiser.report.section import Section, section_of
+from optimiser.report.cautions import CAUTION, CAUTIONS
+from optimiser.report.section import Section, section_of, shortened
 from optimiser.report.sheet import ForceRow, Sheet, Step
 from optimiser.report.sheet_charts import force_chart, lift_chart, share_chart
-from optimiser.report.sheet_table import TunePage
+from optimiser.report.sheet_table import TuneCell, TunePage, pages_of, spanned, tight
 from optimiser.report.tables import force_text
 
 #: More than these would not fit on one printed page.
 MOST_ROWS = 11
 MOST_WARNINGS = 5
-LONGEST_WARNING = 190
-_DENSE_FROM = 13
+LONGEST_WARNING = 170
+LONGEST_BIN = 34
+_ROOMY_TO, _DENSE_FROM = 8, 13
+_DENSE_WARNINGS = 4
 #: Where a bar for a utilisation of 1 ends, of the 40 units of a bar's box.
 _LIMIT = 32.0
 _BAR_BOX = 40.0
@@ -69,7 +71,7 @@ class Drawn:
     bands: tuple[BandLine, ...]
     warnings: tuple[str, ...]
     cautions: tuple[tuple[str, str], ...]
-    dense: bool
+    density: str
     by_hand: tuple[str, ...] = _BY_HAND
     estimate: str = ESTIMATE
 
@@ -87,6 +89,11 @@ class Drawn:
             for place, one in enumerate(step.worked)
         ]
 
+    def bins(self, step: Step) -> str:
+        """Where the size lies, as far as there is room."""
+        room = LONGEST_BIN // 2 if "dense" in self.density else LONGEST_BIN
+        return shortened(" + ".join(step.bins), room) or "-"
+
     def use_words(self, step: Step) -> str:
         """The bars in words."""
         values = ", ".join(f"{one.utilisation:.2f}" for one in step.worked)
@@ -101,17 +108,17 @@ def sheet_html(sheets: Sequence[Sheet], title: str | None = None) -> str:
     return _render(named, (), sheets)
 
 
-def table_html(tables: Sequence[TunePage], sheets: Sequence[Sheet] = ()) -> str:
-    """Landscape pages of a tune table, then one sheet a cell, in one HTML page."""
-    if not tables:
-        raise ValueError("a page needs at least one table")
-    return _render(tables[0].title, tables, sheets)
+def table_html(table: TunePage, sheets: Sequence[Sheet] = ()) -> str:
+    """A landscape page of the tune table (more where it is too large), then one sheet a cell."""
+    return _render(table.title, pages_of(table), sheets)
 
 
 def _render(title: str, tables: Sequence[TunePage], sheets: Sequence[Sheet]) -> str:
     drawn = [(sheet, _draw(sheet, f"s{number}")) for number, sheet in enumerate(sheets, start=1)]
     template = _environment().get_template("page.html.j2")
-    page: str = template.render(title=title, tables=tables, sheets=drawn, estimate=ESTIMATE)
+    page: str = template.render(
+        title=title, tables=tables, sheets=drawn, estimate=ESTIMATE, caution=CAUTION
+    )
     return page
 
 
@@ -128,6 +135,9 @@ def _environment() -> Any:
     )
     environment.filters["force"] = _force
     environment.filters["signed"] = _signed
+    environment.filters["spanned"] = spanned
+    environment.filters["changed"] = _any_changed
+    environment.filters["tight"] = tight
     return environment
 
 
@@ -145,8 +155,15 @@ def _draw(sheet: Sheet, name: str) -> Drawn:
         bands=_bands(sheet),
         warnings=_warnings(sheet.warnings),
         cautions=tuple(_headed(caution) for caution in CAUTIONS),
-        dense=len(sheet.steps) >= _DENSE_FROM or len(sheet.warnings) >= MOST_WARNINGS,
+        density=_density(sheet),
     )
+
+
+def _density(sheet: Sheet) -> str:
+    """Class of the sheet's style, so that much still fits on a page and little fills it."""
+    if len(sheet.steps) >= _DENSE_FROM or len(sheet.warnings) >= _DENSE_WARNINGS:
+        return " dense"
+    return " roomy" if len(sheet.steps) <= _ROOMY_TO else ""
 
 
 def chosen(rows: Sequence[ForceRow]) -> tuple[ForceRow, ...]:
@@ -160,8 +177,7 @@ def chosen(rows: Sequence[ForceRow]) -> tuple[ForceRow, ...]:
 def _warnings(warnings: Sequence[str]) -> tuple[str, ...]:
     """What fits on the sheet; the rest is counted, so that nobody takes it for all."""
     shown = [
-        text if len(text) <= LONGEST_WARNING else f"{text[: LONGEST_WARNING - 1].rstrip()}\u2026"
-        for text in warnings[:MOST_WARNINGS]
+        shortened(text, LONGEST_WARNING) for text in warnings[:MOST_WARNINGS]
     ]
     more = len(warnings) - len(shown)
     if more:
@@ -186,14 +202,20 @@ def _bands(sheet: Sheet) -> tuple[BandLine, ...]:
         ("high", errors.mid_to_m_s, last, errors.high_percent),
         ("whole", first, last, errors.total_percent),
     ]
-    scale = max(10.0, *(value for *_span, value in spans if value is not None))
+    known = [value for *_span, value in spans if value is not None and isfinite(value)]
+    scale = max([10.0, *known])
     lines = []
     for name, low, high, value in spans:
         span = f"{low:.2g} to {high:.2g} m/s"
-        text = "-" if value is None else f"{value:.1f} %"
-        width = 0.0 if value is None else _BAR_BOX * value / scale
+        counts = value is not None and isfinite(value)
+        text = f"{value:.1f} %" if counts else "-"
+        width = _BAR_BOX * value / scale if value is not None and counts else 0.0
         lines.append(BandLine(name, span, width, text, f"error in the {name} range: {text}"))
     return tuple(lines)
+
+
+def _any_changed(cells: Sequence[TuneCell | None]) -> bool:
+    return any(cell is not None and cell.changes for cell in cells)
 
 
 def _force(value: float | None) -> str:

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from itertools import islice, takewhile
 
 from optimiser.prediction import ShimState
-from optimiser.report.sheet import Exchange, Role, Step, Worked
+from optimiser.report.sheet import Role, Step, Worked
 from optimiser.stack import Group, Shim, Stack
 from optimiser.stock import SAME_DIAMETER_MM, SAME_THICKNESS_MM, Stock, StockItem
 
@@ -77,17 +77,6 @@ def shortages(stack: Stack, drawer: Drawer | None) -> list[str]:
         f"{drawer.name} lacks {group.quantity} x {group.shim} mm"
         for group in drawer.stock.shortage(stack, drawer.post_mm)
     ]
-
-
-def exchange_of(fitted: Stack, stack: Stack) -> Exchange:
-    """What to take out and what to put in, to get from the fitted stack to this one."""
-    counts: dict[Shim, int] = {}
-    for one, sign in ((stack, 1), (fitted, -1)):
-        for group in one.groups:
-            counts[group.shim] = counts.get(group.shim, 0) + sign * group.quantity
-    out = [str(Group(-n, shim)) for shim, n in counts.items() if n < 0]
-    put_in = [str(Group(n, shim)) for shim, n in counts.items() if n > 0]
-    return Exchange(tuple(out), tuple(put_in))
 
 
 def _gap_mm(groups: Sequence[Group], place: int) -> float:

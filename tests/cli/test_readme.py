@@ -14,6 +14,8 @@ EXAMPLES = re.findall(r"^    shimwright (.+)$", README, re.MULTILINE)
 RUNNABLE = [example for example in EXAMPLES if "my-" not in example]
 #: A command in backquotes, then the block of its output.
 SHOWN = re.findall(r"`shimwright ([^`]+)`:\n\n```text\n(.*?)```", README, re.DOTALL)
+#: What a search took, which differs from run to run.
+TIMES = re.compile(r"^\d+ stacks tried, .*?Seed \d+\.$", re.MULTILINE | re.DOTALL)
 NUMBER = re.compile(r"[-+]?\d+(?:\.\d+)?")
 
 
@@ -48,5 +50,6 @@ def test_shown_output_is_the_programs(command: str, shown: str) -> None:
 
 
 def _text(output: str) -> str:
-    """Output without the small chart, whose marks may jump by a line."""
+    """Output without the small chart, whose marks may jump by a line, and without times."""
+    output = TIMES.sub("", output)
     return "\n".join(line for line in output.splitlines() if not re.search(r"[│|] *[●○]", line))
