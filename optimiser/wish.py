@@ -19,6 +19,7 @@ from optimiser.damper import Direction
 from optimiser.faults import BadInput
 from optimiser.files import Kind
 from optimiser.hydraulics.gas import gas_force_n
+from optimiser.mechanics.deflect import RISE_LIMIT
 from optimiser.prediction import Prediction, Setup, predict
 from optimiser.stack import Stack
 from optimiser.wanted.change import changed
@@ -46,6 +47,8 @@ CHANGE_VELOCITIES: dict[Direction, tuple[float, ...]] = {
 #: The damper that the bundled example targets are made for.
 EXAMPLE_DAMPER = "rear-monotube"
 USUAL_FEEL = "balanced"
+#: The usual velocities end where the fitted stack leaves the model, if so many of them are left.
+LEAST_POINTS = 5
 
 Stacks = Mapping[Direction, Stack]
 Files = tuple[tuple[Kind, str], ...]
@@ -169,9 +172,18 @@ def _of_change(said: Said, setups: Sequence[Setup], stacks: Stacks) -> Wished:
         velocity = np.array(said.velocity_m_s or CHANGE_VELOCITIES[setup.direction])
         if velocity.size < 2:
             raise BadInput("--velocities holds one velocity only; allowed: two or more")
-        seen = predict(setup, fitted_stack(setup, stacks), velocity, said.clicks)
+        stack = fitted_stack(setup, stacks)
+        seen = predict(setup, stack, velocity, said.clicks)
+        known = velocity[seen.rise_thicknesses <= RISE_LIMIT]
+        notes = []
+        if not said.velocity_m_s and LEAST_POINTS <= known.size < velocity.size:
+            seen = predict(setup, stack, known, said.clicks)
+            notes.append(
+                f"the target ends at {known[-1]:g} m/s: beyond, the fitted stack lies outside the "
+                "model (--velocities to choose otherwise)"
+            )
         target = _changed(said, seen)
-        notes = [f"fitted stack: {warning}" for warning in seen.warnings]
+        notes += [f"fitted stack: {warning}" for warning in seen.warnings]
         targets.append(replace(target, notes=(*target.notes, *notes)))
     return Wished("change", tuple(targets))
 

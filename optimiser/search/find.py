@@ -128,8 +128,11 @@ def find(order: Order, progress: ProgressCall | None = None, stop: StopCall | No
     middle = 0.5 * setup.clicks_range if setup.clicks_range else None
     checked.rows(worth_checking(outcome.archive, CHECKED, middle))
     archives = [outcome.archive, checked]
-    if not outcome.cut_short:
-        polished = _polish_corrected(order, quick, checked, reported, outcome, progress, stop)
+    cut_short = outcome.cut_short
+    if not cut_short:
+        polished, cut_short = _polish_corrected(
+            order, quick, checked, reported, outcome, progress, stop
+        )
         checked.rows(worth_checking(polished, CHECKED, middle))
         archives.append(polished)
     limits = limits_of(setup, space, target)
@@ -141,7 +144,7 @@ def find(order: Order, progress: ProgressCall | None = None, stop: StopCall | No
         feasibility(target, limits),
         sum(len(archive) for archive in archives),
         outcome.complete,
-        outcome.cut_short,
+        cut_short,
         perf_counter() - began,
         sum(archive.model_seconds for archive in archives),
         outcome.seconds.library,
@@ -173,8 +176,9 @@ def _polish_corrected(
     outcome: Outcome,
     progress: ProgressCall | None,
     stop: StopCall | None,
-) -> Archive:
-    """A local pass of the quick model on the target corrected by what the fine model said."""
+) -> tuple[Archive, bool]:
+    """A local pass of the quick model on the target corrected by what the fine model said, and
+    whether it was cut short."""
     rows = checked.front()
     best = checked.plans[rows[np.argmin(checked.objectives[rows, 0])]]
     force = reported.final(best).force_n
@@ -192,7 +196,7 @@ def _polish_corrected(
     archive.rows(checked.plans.copy())
     rng = np.random.default_rng((order.seed, 3))
     Polish(archive, budget, rng, replace(order.settings.effort, runners_up=10)).run()
-    return archive
+    return archive, budget.cut_short
 
 
 def exchanged(one: Stack, other: Stack) -> int:
