@@ -9,7 +9,7 @@
 
 import sys
 import time
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import moocore
 import numpy as np
@@ -152,7 +152,8 @@ def recover(count: int = 60, evaluations: int = 30_000) -> None:
         stack, target = _hidden(setup, space, number % 3, rng)
         began = time.perf_counter()
         settings = Settings(evaluations=evaluations)
-        found = find(Order(setup, target, lines, settings=settings, workers=2, seed=number))
+        order = Order(setup, target, lines, rank_by="error", settings=settings, workers=2)
+        found = find(replace(order, seed=number))
         seconds.append(time.perf_counter() - began)
         errors.append(min(p.error_percent for p in found.proposals))
         print(f"{number + 1}: {errors[-1]:.3f} % {' '.join(stack)}", flush=True)
