@@ -175,6 +175,7 @@ def sheets_of_curves(
     beside: Beside | None = None,
 ) -> "list[Sheet]":
     """One sheet a predicted stack."""
+    from optimiser.report.band import smooth_band
     from optimiser.report.sheet import Fact, Source
     from optimiser.report.sheet_from import About, program_name, sheet_of
     from optimiser.report.sheet_steps import Drawer
@@ -194,6 +195,7 @@ def sheets_of_curves(
             shown.target,
             drawer=drawer,
             measured=tuple(shown.measured),
+            spread_n=smooth_band(seen, result.spread),
         )
         sheets.append(sheet_of(seen, about))
     return sheets

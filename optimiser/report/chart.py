@@ -99,6 +99,7 @@ def draw_panel(axes: Any, panel: Panel) -> None:
     for number, line in enumerate(predicted):
         style = STYLES[number % len(STYLES)]
         _draw_band(axes, line, style, only=len(predicted) == 1)
+        _draw_spread(axes, line, style, first=number == 0)
         _draw_line(axes, line, style, number)
     fastest = max(float(line.velocity_m_s.max()) for line in panel.lines)
     axes.set_title(panel.title, loc="left", fontsize=10, fontweight="bold")
@@ -129,6 +130,25 @@ def _draw_line(axes: Any, line: CurveLine, style: Style, place: int = 0) -> None
         markeredgewidth=1.4,
         label=line.label,
         zorder=3,
+    )
+
+
+def _draw_spread(axes: Any, line: CurveLine, style: Style, first: bool) -> None:
+    """The likely spread, hatched, so that it is not taken for the click range; only its edges
+    for the further curves."""
+    if line.p05_n is None or line.p95_n is None:
+        return
+    axes.fill_between(
+        line.velocity_m_s,
+        line.p05_n,
+        line.p95_n,
+        facecolor="none",
+        edgecolor=style.colour,
+        hatch=".." if first else None,
+        alpha=0.5,
+        linewidth=0.8,
+        label=f"likely spread of {line.label}, 5 to 95 %" if first else None,
+        zorder=2,
     )
 
 

@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from textwrap import wrap
+from typing import TYPE_CHECKING
 
 from rich.console import RenderableType
 from rich.text import Text
@@ -15,13 +16,26 @@ from optimiser.report.look import Look
 from optimiser.report.small_chart import small_chart
 from optimiser.report.tables import compare_tables, force_table, stack_table
 
+if TYPE_CHECKING:
+    from optimiser.fitting.bands import Bands
+    from optimiser.fitting.spread import Spread
+
+#: What stands in place of a band.
+NO_BAND = "no band: too many of the samples lie outside the model"
+
 
 @dataclass(frozen=True)
 class Named:
-    """A prediction with the name its stack goes by."""
+    """A prediction with the name its stack goes by.
+
+    ``spread`` what its band is drawn from, None where none is wanted; ``bands`` at the prediction's
+    velocities, None as well where it cannot be computed.
+    """
 
     label: str
     prediction: Prediction
+    spread: "Spread | None" = None
+    bands: "Bands | None" = None
 
 
 def show_curves(results: Sequence[Named], look: Look, quiet: bool = False) -> None:
@@ -66,6 +80,8 @@ def lines_of(results: Sequence[Named]) -> list[CurveLine]:
                 "predicted",
                 seen.force_open_n if adjuster else None,
                 seen.force_closed_n if adjuster else None,
+                result.bands.p05_n if result.bands else None,
+                result.bands.p95_n if result.bands else None,
             )
         )
     return lines
@@ -75,7 +91,8 @@ def _single(result: Named, look: Look) -> Iterable[RenderableType]:
     seen = result.prediction
     yield Text(heading(seen), style="bold")
     yield ""
-    yield force_table(seen, look)
+    yield force_table(seen, look, result.bands)
+    yield from _about_band(result, look)
     yield ""
     yield Text(f"{result.label} stack: {_size(seen)}", style="bold")
     yield stack_table(seen, look)
@@ -94,6 +111,7 @@ def _comparison(results: Sequence[Named], look: Look) -> Iterable[RenderableType
     for table in compare_tables(predictions, names, look):
         yield table
         yield ""
+    yield from _bands_compared(results, names, look)
     widest = max(group.shim.outer_mm for seen in predictions for group in seen.stack.groups)
     for name, result in zip(names, results, strict=True):
         yield Text(f"{name}  {result.label}", style="bold")
@@ -101,6 +119,26 @@ def _comparison(results: Sequence[Named], look: Look) -> Iterable[RenderableType
         yield ""
         yield from _remarks(result.prediction, look)
         yield ""
+
+
+def _about_band(result: Named, look: Look) -> Iterable[RenderableType]:
+    if result.spread is not None:
+        text = result.spread.sentence if result.bands is not None else NO_BAND
+        yield from _paragraph(text, look, "dim")
+
+
+def _bands_compared(
+    results: Sequence[Named], names: Sequence[str], look: Look
+) -> Iterable[RenderableType]:
+    spread = results[0].spread
+    if spread is None:
+        return
+    from optimiser.report.band import bands_tables
+
+    seen, bands = [one.prediction for one in results], [one.bands for one in results]
+    yield from bands_tables(seen, bands, names, look)
+    yield from _paragraph(f"likely: {spread.sentence}", look, "dim")
+    yield ""
 
 
 def heading(seen: Prediction) -> str:

@@ -14,7 +14,8 @@ LineKind = Literal["predicted", "target", "measured"]
 class CurveLine:
     """Force (N) over shaft velocity (m/s), arrays (n,).
 
-    ``low_n`` and ``high_n`` bound a band drawn behind it: the adjuster fully open and shut.
+    ``low_n`` and ``high_n`` bound a band drawn behind it: the adjuster fully open and shut;
+    ``p05_n`` and ``p95_n`` another one: the likely spread.
     """
 
     label: str
@@ -23,6 +24,8 @@ class CurveLine:
     kind: LineKind = "predicted"
     low_n: Floats | None = None
     high_n: Floats | None = None
+    p05_n: Floats | None = None
+    p95_n: Floats | None = None
 
 
 @dataclass(frozen=True)

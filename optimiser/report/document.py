@@ -49,6 +49,7 @@ def _one_curve(result: Named) -> dict[str, Any]:
         "height_mm": seen.stack.height_mm,
         "parts": seen.stack.parts,
         **_arrays(seen),
+        **_band(result),
         "shims": [_shim(shim) for shim in seen.shims],
         "utilisation": seen.utilisation,
         "cavitation_m_s": seen.cavitation_m_s,
@@ -73,6 +74,20 @@ def _arrays(seen: Prediction) -> dict[str, Any]:
         "rise_thicknesses",
     )
     return {name: getattr(seen, name) for name in names}
+
+
+def _band(result: Named) -> dict[str, Any]:
+    """5 and 95 % of the force, and what they are drawn from; empty where no band was wanted."""
+    spread, bands = result.spread, result.bands
+    if spread is None:
+        return {}
+    return {
+        "force_p05_n": None if bands is None else bands.p05_n,
+        "force_p95_n": None if bands is None else bands.p95_n,
+        "samples": spread.samples,
+        "seed": spread.seed,
+        "band_source": spread.origin,
+    }
 
 
 def _shim(shim: ShimState) -> dict[str, Any]:

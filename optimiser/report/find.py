@@ -6,6 +6,8 @@ import numpy as np
 from rich.console import RenderableType
 from rich.text import Text
 
+from optimiser.fitting.bands import Bands
+from optimiser.fitting.spread import Likely
 from optimiser.mechanics.deflect import RISE_LIMIT
 from optimiser.prediction import Prediction
 from optimiser.report.cautions import CAUTION
@@ -19,7 +21,6 @@ from optimiser.report.target import outside_lines
 from optimiser.results import Answer
 from optimiser.search.evaluate import middle_clicks
 from optimiser.search.find import Found, Proposal
-from optimiser.search.rank import EXPLAINED
 from optimiser.stack import Group, Shim, Stack
 from optimiser.wanted.bands import band_edges_m_s
 
@@ -94,13 +95,19 @@ def statistics(answer: Answer) -> str:
     )
 
 
-def panels_of(answer: Answer, curves: Sequence[Sequence[Prediction]]) -> list[Panel]:
-    """One panel a direction: the target and smooth curves of its best stacks."""
+def panels_of(
+    answer: Answer,
+    curves: Sequence[Sequence[Prediction]],
+    bands: Sequence[Bands | None] | None = None,
+) -> list[Panel]:
+    """One panel a direction: the target and smooth curves of its best stacks, with the likely
+    spread of the first (``bands``, one a direction, at the velocities of its curve)."""
     panels = []
     for place, (found, seen) in enumerate(zip(answer.found, curves, strict=True)):
         lines = [_wanted(found)]
         alone = len(seen) == 1 and seen[0].setup.clicks_range > 0
         for number, one in enumerate(seen, start=1):
+            band = bands[place] if bands and number == 1 else None
             lines.append(
                 CurveLine(
                     _label(number, one),
@@ -109,6 +116,8 @@ def panels_of(answer: Answer, curves: Sequence[Sequence[Prediction]]) -> list[Pa
                     "predicted",
                     one.force_open_n if alone else None,
                     one.force_closed_n if alone else None,
+                    band.p05_n if band else None,
+                    band.p95_n if band else None,
                 )
             )
         panels.append(Panel(heading(answer, place), tuple(lines)))
@@ -123,14 +132,15 @@ def _label(number: int, seen: Prediction) -> str:
 
 def _circuit(answer: Answer, place: int, look: Look, quiet: bool) -> Iterable[RenderableType]:
     found, best = answer.found[place], answer.best[place]
+    likely = answer.likely[place] if answer.likely else None
     yield Text(heading(answer, place), style="bold")
     yield from paragraph(f"wanted: {found.order.target.origin}", look)
     yield from _what_limits(found, look)
     yield ""
-    yield ranked_table(found, look)
+    yield ranked_table(found, look, likely)
     if not quiet:
         yield ""
-        for line in _legend(found):
+        for line in (answer.order.rank_rule, *_legend(found, likely)):
             yield from paragraph(line, look, "dim")
     yield ""
     yield Text("stacks, face first: number x diameter x thickness, mm", style="bold")
@@ -139,7 +149,9 @@ def _circuit(answer: Answer, place: int, look: Look, quiet: bool) -> Iterable[Re
         yield ""
     yield from _best(found, best, look)
     yield ""
-    yield envelope_table(found, look)
+    yield envelope_table(found, look, likely)
+    if likely:
+        yield from paragraph(likely.spread.sentence, look, "dim")
     if not quiet:
         yield from paragraph(_BOUNDS, look, "dim")
         yield ""
@@ -161,8 +173,7 @@ def _what_limits(found: Found, look: Look) -> Iterable[Text]:
         yield from paragraph(f"note: {note}", look, "yellow")
 
 
-def _legend(found: Found) -> Iterable[str]:
-    yield EXPLAINED[found.order.rank_by]
+def _legend(found: Found, likely: Likely | None) -> Iterable[str]:
     setup, clicks = found.order.setup, found.order.click_range
     if setup.clicks_range and clicks is not None:
         span = f"{clicks[0]}" if clicks[0] == clicks[1] else f"{clicks[0]} to {clicks[1]}"
@@ -178,6 +189,11 @@ def _legend(found: Found) -> Iterable[str]:
         "stress over what the steel endures, ! from 1 on. variants: near-twins not listed."
         + (" changed: shims taken out plus shims put in." if found.order.fitted else "")
     )
+    if likely:
+        yield (
+            f"within {likely.within_percent:g} %: the chance that the real damper's error is "
+            "that or less."
+        )
 
 
 def _best(found: Found, best: Prediction, look: Look) -> Iterable[RenderableType]:

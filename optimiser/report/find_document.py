@@ -2,13 +2,13 @@
 
 from typing import Any
 
+from optimiser.fitting.spread import Likely
 from optimiser.prediction import Prediction
 from optimiser.report.curve import Named
 from optimiser.report.document import as_json, curve_document
 from optimiser.report.find import exchanged_shims
 from optimiser.results import Answer
 from optimiser.search.find import Found, Proposal
-from optimiser.search.rank import EXPLAINED
 from optimiser.stack import Stack
 
 
@@ -20,8 +20,8 @@ def find_document(answer: Answer) -> dict[str, Any]:
     """
     order = answer.order
     circuits = {
-        found.order.setup.direction: _circuit(found, best)
-        for found, best in zip(answer.found, answer.best, strict=True)
+        found.order.setup.direction: _circuit(answer, place)
+        for place, found in enumerate(answer.found)
     }
     document = {
         **next(iter(circuits.values())),
@@ -48,10 +48,14 @@ def result_document(answer: Answer) -> dict[str, Any]:
     return {**find_document(answer), "order": answer.order.record()}
 
 
-def _circuit(found: Found, best: Prediction) -> dict[str, Any]:
-    order = found.order
-    stacks = [_stack(found, proposal) for proposal in found.proposals]
-    stacks[0] |= _in_full(best)
+def _circuit(answer: Answer, place: int) -> dict[str, Any]:
+    found, order = answer.found[place], answer.found[place].order
+    likely = answer.likely[place] if answer.likely else None
+    stacks = [
+        _stack(found, proposal) | _band(likely, number)
+        for number, proposal in enumerate(found.proposals)
+    ]
+    stacks[0] |= _in_full(answer.best[place])
     return {
         "circuit": order.setup.direction,
         "valve": order.setup.valve.name,
@@ -63,8 +67,9 @@ def _circuit(found: Found, best: Prediction) -> dict[str, Any]:
         "fitted": _shims(order.fitted) if order.fitted else None,
         "click_range": order.click_range,
         "clicks_range": order.setup.clicks_range,
-        "rank_by": order.rank_by,
-        "rank_rule": EXPLAINED[order.rank_by],
+        "rank_by": answer.order.rank_by,
+        "rank_rule": answer.order.rank_rule,
+        **_drawn(likely),
         "evaluations": found.evaluations,
         "complete": found.complete,
         "seconds": found.seconds,
@@ -95,6 +100,28 @@ def _stack(found: Found, proposal: Proposal) -> dict[str, Any]:
         "outside_model": proposal.outside_model,
         "velocity_m_s": found.order.target.velocity_m_s,
         "force_n": proposal.force_n,
+    }
+
+
+def _band(likely: Likely | None, place: int) -> dict[str, Any]:
+    """5 and 95 % of one stack's force and its chance; empty where no bands were wanted."""
+    if likely is None:
+        return {}
+    bands = likely.bands[place]
+    return {
+        "force_p05_n": None if bands is None else bands.p05_n,
+        "force_p95_n": None if bands is None else bands.p95_n,
+        "chance_within": None if bands is None else likely.chance[place],
+    }
+
+
+def _drawn(likely: Likely | None) -> dict[str, Any]:
+    if likely is None:
+        return {}
+    return {
+        "within_percent": likely.within_percent,
+        "samples": likely.spread.samples,
+        "band_source": likely.spread.origin,
     }
 
 

@@ -6,8 +6,9 @@ import numpy as np
 from rich.table import Table
 from rich.text import Text
 
+from optimiser.fitting.spread import Likely
 from optimiser.report.look import Look
-from optimiser.report.tables import force_text, new_table
+from optimiser.report.tables import BAND_HEADINGS, edges_of, force_text, new_table
 from optimiser.search.find import Found, Proposal
 
 #: Limits beyond any damper are not worth their digits.
@@ -15,12 +16,13 @@ _MOST_PRINTED_N = 99_999.0
 _GAP = 2
 
 
-def ranked_table(found: Found, look: Look) -> Table:
-    """One row a stack, best first."""
+def ranked_table(found: Found, look: Look, likely: Likely | None = None) -> Table:
+    """One row a stack, best first; with the chance to be within an error where it is known."""
     revalve = any(proposal.changed is not None for proposal in found.proposals)
     marked = any(proposal.outside_model for proposal in found.proposals)
     headings = ["", "error\n%", "worst\n%", "low\n%", "mid\n%", "high\n%", "parts\n", "sizes\n"]
     headings += ["util.\n", "clicks\n", "height\nmm", "vari-\nants"]
+    headings += [f"within\n{likely.within_percent:g} %"] if likely else []
     headings += ["chan-\nged"] if revalve else []
     headings += [""] if marked else []
     table = new_table(look, *headings, left=[len(headings) - 1] if marked else [])
@@ -28,6 +30,7 @@ def ranked_table(found: Found, look: Look) -> Table:
         table.padding = (0, 0, 0, 0)
     for place, proposal in enumerate(found.proposals, start=1):
         cells = _ranked_cells(place, proposal, found.order.setup.clicks_range > 0)
+        cells += [chance_text(likely, place - 1)] if likely else []
         cells += [Text(str(proposal.changed))] if revalve else []
         cells += [Text("outside" * proposal.outside_model, style="yellow")] if marked else []
         table.add_row(*cells)
@@ -54,6 +57,13 @@ def _ranked_cells(place: int, proposal: Proposal, adjuster: bool) -> list[Text]:
     ]
 
 
+def chance_text(likely: Likely, place: int) -> Text:
+    """A stack's chance, %; a dash where its band cannot be computed."""
+    if likely.bands[place] is None:
+        return Text("-")
+    return Text(f"{100.0 * likely.chance[place]:.0f} %", style="bold")
+
+
 def percent_text(percent: float | None) -> str:
     """A per cent of error; a dash where no point lies in the band."""
     if percent is None:
@@ -75,20 +85,24 @@ def stacks_side_by_side(found: Found, look: Look) -> Iterable[Table]:
         yield table
 
 
-def envelope_table(found: Found, look: Look) -> Table:
-    """The target, the best stack, and what bounds every stack, at the target's velocities."""
+def envelope_table(found: Found, look: Look, likely: Likely | None = None) -> Table:
+    """The target, the best stack, its band where it is known, and what bounds every stack, at the
+    target's velocities."""
     target, limits, best = found.order.target, found.limits, found.proposals[0]
     table = new_table(
         look,
         "velocity\nm/s",
         "wanted\nN",
         "stack 1\nN",
+        *(BAND_HEADINGS if likely else []),
         "off\n%",
         "softest\npossible",
         "softest\nin stock",
         "firmest\nin stock",
         "firmest\npossible",
     )
+    if likely:
+        table.padding = (0, 0, 0, 0)
     off = 100.0 * target.relative(best.force_n)
     for row, velocity in enumerate(target.velocity_m_s):
         bounds = (limits.bare_n, limits.softest_n, limits.firmest_n, limits.shut_n)
@@ -96,6 +110,7 @@ def envelope_table(found: Found, look: Look) -> Table:
             Text(f"{velocity:.4g}"),
             Text(force_text(target.force_n[row])),
             Text(force_text(best.force_n[row]), style="bold"),
+            *(edges_of(likely.bands[0], row) if likely else []),
             Text(f"{off[row]:+.1f}"),
             *(Text(limit_text(float(bound[row])), style="dim") for bound in bounds),
         )

@@ -20,7 +20,7 @@ MOST_ROWS = 11
 MOST_WARNINGS = 5
 LONGEST_WARNING = 170
 LONGEST_BIN = 34
-_ROOMY_TO, _DENSE_FROM = 8, 13
+_ROOMY_TO, _DENSE_FROM, _PACKED_FROM = 8, 13, 19
 _DENSE_WARNINGS = 4
 #: Where a bar for a utilisation of 1 ends, of the 40 units of a bar's box.
 _LIMIT = 32.0
@@ -161,6 +161,8 @@ def _draw(sheet: Sheet, name: str) -> Drawn:
 
 def _density(sheet: Sheet) -> str:
     """Class of the sheet's style, so that much still fits on a page and little fills it."""
+    if len(sheet.steps) >= _PACKED_FROM:
+        return " dense packed"
     if len(sheet.steps) >= _DENSE_FROM or len(sheet.warnings) >= _DENSE_WARNINGS:
         return " dense"
     return " roomy" if len(sheet.steps) <= _ROOMY_TO else ""
@@ -176,9 +178,7 @@ def chosen(rows: Sequence[ForceRow]) -> tuple[ForceRow, ...]:
 
 def _warnings(warnings: Sequence[str]) -> tuple[str, ...]:
     """What fits on the sheet; the rest is counted, so that nobody takes it for all."""
-    shown = [
-        shortened(text, LONGEST_WARNING) for text in warnings[:MOST_WARNINGS]
-    ]
+    shown = [shortened(text, LONGEST_WARNING) for text in warnings[:MOST_WARNINGS]]
     more = len(warnings) - len(shown)
     if more:
         shown.append(f"{more} more; see the result on the terminal")

@@ -10,6 +10,7 @@ from optimiser.checking import validate
 from optimiser.damper import Direction
 from optimiser.faults import BadInput
 from optimiser.prediction import predict
+from optimiser.report.band import smooth_band
 from optimiser.report.find import exchanged_shims
 from optimiser.report.sheet import Exchange, Fact, Sheet, Source
 from optimiser.report.sheet_from import About, program_name, sheet_of
@@ -116,7 +117,7 @@ def sheets_of(tuned: Tuned, command: str = "", ranks: Sequence[int] = (1,)) -> l
     """
     _check_ranks(tuned, ranks)
     sheets = []
-    stock = _whole_drawer(tuned.order)
+    stock = tuned.order.whole_drawer
     for tunes in tuned.tunes:
         for rank in sorted(set(ranks)):
             if rank <= len(tunes.stacks):
@@ -156,6 +157,7 @@ def _sheet(tuned: Tuned, tunes: Tunes, rank: int, stock: Stock, command: str) ->
         _exchange(circuit.fitted, tune.nominal),
         facts=ride_facts(tuned.ride or {}),
         warnings=tuple(_warnings(tuned, tunes)),
+        spread_n=smooth_band(seen, order.spread(circuit)),
     )
     return sheet_of(seen, about)
 
@@ -200,7 +202,7 @@ def _warnings(tuned: Tuned, tunes: Tunes) -> Iterable[str]:
     if tuned.cut_short:
         yield "the search was cut short: a longer one may find better stacks"
     if tunes.outside:
-        more = f" (and {len(tunes.outside) - 1} more points)" if len(tunes.outside) > 1 else ""
+        more = f" (and at {len(tunes.outside) - 1} more)" if len(tunes.outside) > 1 else ""
         yield f"the target cannot be met everywhere: {tunes.outside[0]}{more}"
     yield from tuned.order.notes
 
@@ -214,15 +216,6 @@ def _exchange(fitted: Stack | None, stack: Stack) -> Exchange | None:
 
 def _circuit(order: SavedOrder, direction: Direction) -> SavedCircuit:
     return next(circuit for circuit in order.circuits if circuit.direction == direction)
-
-
-def _whole_drawer(order: SavedOrder) -> Stock:
-    """The stock, and the shims of the fitted stacks, which come out of the damper."""
-    stock = order.drawer
-    for circuit in order.circuits:
-        if circuit.fitted is not None:
-            stock = stock.put_back(circuit.fitted, post_mm(order.setup(circuit)))
-    return stock
 
 
 def _without(stock: Stock, order: SavedOrder, tunes: Tunes) -> Stock:

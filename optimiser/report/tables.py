@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from math import isfinite, nan
+from typing import TYPE_CHECKING
 
 from rich.table import Table
 from rich.text import Text
@@ -11,8 +12,13 @@ from optimiser.prediction import Prediction, ShimState
 from optimiser.report.drawing import side_view
 from optimiser.report.look import Look
 
+if TYPE_CHECKING:
+    from optimiser.fitting.bands import Bands
+
 #: Stacks side by side in one table of 80 columns.
 SIDE_BY_SIDE = 4
+#: Columns of a likely spread.
+BAND_HEADINGS = ["5 %\nN", "95 %\nN"]
 
 
 def new_table(look: Look, *headings: str, left: Sequence[int] = ()) -> Table:
@@ -34,16 +40,19 @@ def force_text(force_n: float) -> str:
     return f"{force_n:.1f}" if force_n < 100.0 else f"{force_n:.0f}"
 
 
-def force_table(seen: Prediction, look: Look) -> Table:
-    """Force, its click range, pressure, lift and the bleed's share over velocity."""
+def force_table(seen: Prediction, look: Look, bands: "Bands | None" = None) -> Table:
+    """Force, its band, its click range, pressure, lift and the bleed's share over velocity."""
     adjuster = seen.setup.clicks_range > 0
     notes = [_row_note(seen, row) for row in range(seen.velocity_m_s.size)]
-    headings = ["velocity\nm/s", "force\nN"]
+    headings = ["velocity\nm/s", "force\nN"] + (BAND_HEADINGS if bands else [])
     headings += ["closed\nN", "open\nN"] if adjuster else []
     headings += ["pressure\nMPa", "lift\nmm", "bleed\n%"]
     table = new_table(look, *headings, *([""] if any(notes) else []), left=[len(headings)])
+    if bands and any(notes):
+        table.padding = (0, 0, 0, 0)
     for row, velocity in enumerate(seen.velocity_m_s):
         cells = [Text(f"{velocity:g}"), Text(force_text(seen.force_n[row]), style="bold")]
+        cells += edges_of(bands, row) if bands else []
         if adjuster:
             cells += [
                 Text(force_text(seen.force_closed_n[row]), style="dim"),
@@ -56,6 +65,13 @@ def force_table(seen: Prediction, look: Look) -> Table:
         ]
         table.add_row(*cells, *([Text(notes[row], style="yellow")] if any(notes) else []))
     return table
+
+
+def edges_of(bands: "Bands | None", row: int) -> list[Text]:
+    """Two cells: 5 and 95 % of the force in one row, N; dashes without a band."""
+    if bands is None:
+        return [Text("-"), Text("-")]
+    return [Text(force_text(bands.p05_n[row])), Text(force_text(bands.p95_n[row]))]
 
 
 def _row_note(seen: Prediction, row: int) -> str:

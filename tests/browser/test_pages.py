@@ -9,18 +9,15 @@ from typing import Any
 import pytest
 
 from optimiser.report.sheet_page import sheet_html, table_html
-from tests.report.sheets import crowded, hostile, plain, tune_page, usual
+from optimiser.report.sheet_table import pages_of
+from tests.report.sheets import crowded, hostile, overfull, plain, tune_page, usual
 
-PAPERS = ("A4", "Letter")
+#: Paper, and whether the browser prints backgrounds, which it does not unless told to.
+PRINTS = [("A4", False), ("Letter", False), ("Letter", True)]
 #: Name, page, and how many printed pages it must have.
 PAGES = {
-    "one": (lambda: sheet_html([usual()]), 1),
-    "plain": (lambda: sheet_html([plain()]), 1),
-    "crowded": (lambda: sheet_html([crowded()]), 1),
-    "hostile": (lambda: sheet_html([hostile()]), 1),
-    "several": (lambda: sheet_html([usual(), crowded(), plain(), hostile()]), 4),
+    "several": (lambda: sheet_html([usual(), crowded(), overfull(), plain(), hostile()]), 5),
     "table": (lambda: table_html(tune_page(), [usual(), plain()]), 3),
-    "large table": (lambda: table_html(tune_page(20, 4, 12)), 6),
 }
 
 
@@ -58,8 +55,7 @@ def test_quiet_and_self_contained(shown: Shown) -> None:
     assert shown.asked[0].startswith("file:")
 
 
-@pytest.mark.parametrize("paper", PAPERS)
-@pytest.mark.parametrize("backgrounds", [True, False])
+@pytest.mark.parametrize(("paper", "backgrounds"), PRINTS)
 def test_one_printed_page_a_sheet(shown: Shown, paper: str, backgrounds: bool) -> None:
     from pypdf import PdfReader
 
@@ -133,3 +129,15 @@ def test_ids_are_unique(shown: Shown) -> None:
 def test_hostile_texts_are_texts(shown: Shown) -> None:
     assert shown.page.locator("script").count() == 0
     assert shown.page.locator("b[x]").count() == 0
+
+
+def test_a_large_table_takes_as_many_landscape_pages_as_it_was_cut_into(browser: Any) -> None:
+    from pypdf import PdfReader
+
+    table = tune_page(masses=20, feels=4, groups=12)
+    page = browser.new_page()
+    page.set_content(table_html(table))
+    for paper in ("A4", "Letter"):
+        pdf = PdfReader(BytesIO(page.pdf(format=paper)))
+        assert len(pdf.pages) == len(pages_of(table)) == 6
+    page.close()

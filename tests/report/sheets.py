@@ -123,6 +123,13 @@ def crowded() -> Sheet:
     )
 
 
+def overfull() -> Sheet:
+    """Twice as many groups as the crowded one."""
+    sheet = crowded()
+    *most, clamp = sheet.steps
+    return replace(sheet, steps=(*most, *most, clamp))
+
+
 def hostile() -> Sheet:
     """Texts that would be code if they were not escaped."""
     sheet = usual()
