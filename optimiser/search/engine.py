@@ -133,7 +133,8 @@ class Search:
 
         settings = self.settings
         share = settings.generations_share * settings.evaluations
-        population = int(min(settings.population, max(share / 20, 16)))
+        most = min(settings.population, settings.evaluations)
+        population = int(min(max(share / 20, 16), most))
         rounds = int(min(settings.generations, max(share / population, 1)))
         first = self._first(repair, population)
         return evolve(archive, repair, first, budget, self.seed, rounds, settings.patience)

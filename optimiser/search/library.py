@@ -66,9 +66,10 @@ class _Mating(InfillCriterion):  # type: ignore[misc]
     Children that were evaluated before are dropped, so a generation may come out smaller.
     """
 
-    def __init__(self, archive: Archive, repair: Repair) -> None:
+    def __init__(self, archive: Archive, repair: Repair, budget: Budget) -> None:
         super().__init__()
         self.archive = archive
+        self.budget = budget
         self.repair_plans = repair
         self.mutation = Mutation(repair.space)
 
@@ -76,6 +77,7 @@ class _Mating(InfillCriterion):  # type: ignore[misc]
         self, problem: Any, pop: Any, n_offsprings: int, random_state: Random, **kwargs: Any
     ) -> Any:
         """A population of up to ``n_offsprings`` new plans."""
+        n_offsprings = min(n_offsprings, self.budget.left)
         plans = pop.get("X").astype(np.int16)
         order = _standing(pop)
         born = np.zeros((0, plans.shape[1]), dtype=np.int16)
@@ -137,7 +139,7 @@ def evolve(
     algorithm = NSGA2(
         pop_size=len(start),
         sampling=archive.fresh(start).astype(np.int64),
-        mating=_Mating(archive, repair),
+        mating=_Mating(archive, repair, budget),
         eliminate_duplicates=False,
     )
     algorithm.setup(problem, termination=_Either(generations, patience), seed=seed)

@@ -1,12 +1,13 @@
 """The local pass: change the best stacks shim by shim until no single change helps.
 
-Champions come first: the least error for each number of parts, then for each family (face and
-clamp diameter, crossover size). All their single changes are tried, then the combinations of two to
-four changes that look best when the changes' effects on the curve are added up. After that the
-rest of the front, random double changes of the champions, and the neighbourhoods of the stacks
-next in error take turns; every gain starts the sequence anew. A neighbourhood is looked at once.
+Six queues share the evaluations: the best stacks (least error for each number of parts), those with
+few parts or few changed shims, the best of each family (face and clamp diameter, crossover
+size), the rest of the front, the next in error, and random double changes. For a champion all
+single changes are tried, then the combinations of two to four changes that look best when the
+changes' effects on the curve are added up. A neighbourhood is looked at once.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Literal
 
@@ -25,7 +26,19 @@ _LOOKED_AT = 100  # front members compared when the next one to explore is chose
 
 
 Move = Literal["single", "combined", "random"]
-Work = tuple[int, Move]
+Queue = Literal["best", "few parts", "families", "front", "runners-up", "random"]
+Step = tuple[int, Move]
+Work = tuple[int, Move, Queue]
+
+#: How the evaluations are shared out between the queues, as long as each has work.
+SHARES: dict[Queue, float] = {
+    "best": 3.0,
+    "few parts": 2.0,
+    "families": 4.0,
+    "front": 1.0,
+    "runners-up": 2.0,
+    "random": 1.0,
+}
 
 
 @dataclass(frozen=True)
@@ -36,10 +49,10 @@ class Effort:
     changes (up to ``depth`` more than one) ``combined`` each are tried at a time, for at most
     ``combined_rounds`` times a stack, if their hoped-for error is below ``hope`` times the
     stack's; not for errors below ``enough`` (a fraction), which no damper would show.
-    Champions with more than ``keen`` times the least error (plus one percentage point), and all
-    but the best ``families``, are left alone. ``random`` double changes a round and
-    ``random_rounds`` rounds for each champion; ``runners_up`` further stacks, lowest error
-    first, have their neighbourhoods looked at.
+    The queue of the best takes champions of up to ``keen`` times the least error plus one
+    percentage point, that of families the best ``families`` of those, that of few parts
+    champions up to the error ``useful``. ``random`` double changes a round and ``random_rounds``
+    rounds are tried for each champion; the next in error are turned to ``runners_up`` times.
     """
 
     batch: int = 48
@@ -52,6 +65,7 @@ class Effort:
     runners_up: int = 100
     keen: float = 3.0
     families: int = 8
+    useful: float = 0.3
     enough: float = 0.0005
 
 
@@ -72,12 +86,13 @@ class Polish:
         self._rounds: dict[int, int] = {}
         self._combined_rounds: dict[int, int] = {}
         self._by_parts: dict[int, int] = {}
+        self._by_changed: dict[int, int] = {}
         self._by_family: dict[int, int] = {}
         self._front = np.zeros(0, dtype=np.int64)
         self._seen = 0
         self._any_within = False
         self._ran = 0
-        self._turn = 0
+        self._spent: dict[Queue, int] = dict.fromkeys(SHARES, 0)
 
     def run(self) -> None:
         """Improve until nothing helps, the evaluations are spent or the user stops."""
@@ -89,7 +104,7 @@ class Polish:
             self._explore(*work)
             self.budget.report("polish")
 
-    def _explore(self, row: int, how: Move) -> None:
+    def _explore(self, row: int, how: Move, queue: Queue) -> None:
         """Evaluate some changes of one row; a better stack is followed before the rest is tried."""
         plan, effort = self.archive.plans[row], self.effort
         if how == "single":
@@ -111,7 +126,9 @@ class Polish:
         else:
             self._rounds[row] = self._rounds.get(row, 0) + 1
             plans = self.archive.fresh(self.neighbours.double(plan, effort.random, self.rng))
+        before = len(self.archive)
         self.archive.rows(plans[: self.budget.left])
+        self._spent[queue] += len(self.archive) - before
         self._notice()
 
     def _hopeful(self, row: int) -> Plans:
@@ -151,6 +168,7 @@ class Polish:
             self._any_within = True
             self._front = self._front[:0]
             self._by_parts.clear()
+            self._by_changed.clear()
             self._by_family.clear()
         if self._any_within:
             new = new[within[new]]
@@ -159,6 +177,8 @@ class Polish:
         self._front = among[best_of(objectives[among])]
         self._crown(self._by_parts, new, objectives[new, 1].astype(np.int64))
         self._crown(self._by_family, new, self._family(new))
+        if self.archive.revalve:
+            self._crown(self._by_changed, new, objectives[new, 3].astype(np.int64))
 
     def _family(self, rows: Ints) -> Ints:
         """(rows,) number of the family: face diameter, clamp diameter and crossover size."""
@@ -182,22 +202,28 @@ class Polish:
         """The row to work on and how; None when all is done."""
         by_parts, by_family = self._keen(self._by_parts), self._keen(self._by_family)
         by_family = by_family[: self.effort.families]
-        work = self._systematic(by_parts) or self._systematic(by_family)
-        if work:
-            return work
-        choices = (
-            self._on_front,
-            lambda: self._at_random([*by_parts, *by_family]),
-            self._runner_up,
-        )
-        for _ in choices:
-            self._turn += 1
-            work = choices[self._turn % len(choices)]()
-            if work:
-                return work
+        queues: dict[Queue, Callable[[], Step | None]] = {
+            "best": lambda: self._systematic(by_parts),
+            "few parts": lambda: self._systematic(self._by_few_parts()),
+            "families": lambda: self._systematic(by_family),
+            "front": self._on_front,
+            "runners-up": self._runner_up,
+            "random": lambda: self._at_random([*by_parts, *by_family]),
+        }
+        for queue in sorted(queues, key=lambda q: self._spent[q] / SHARES[q]):
+            step = queues[queue]()
+            if step:
+                return (*step, queue)
         return None
 
-    def _systematic(self, rows: list[int]) -> Work | None:
+    def _by_few_parts(self) -> list[int]:
+        """Champions of useful error: fewest changed shims first, then fewest parts."""
+        errors = self.archive.objectives[:, 0]
+        champions = [*sorted(self._by_changed.items()), *sorted(self._by_parts.items())]
+        ranked = [row for _, row in champions]
+        return [row for row in ranked if errors[row] <= self.effort.useful]
+
+    def _systematic(self, rows: list[int]) -> Step | None:
         """Single changes of the first row that lacks them, then its promising combinations."""
         errors = self.archive.objectives[:, 0]
         for row in rows:
@@ -207,7 +233,7 @@ class Polish:
                 return row, "combined"
         return None
 
-    def _on_front(self) -> Work | None:
+    def _on_front(self) -> Step | None:
         """The loneliest of some front rows whose neighbourhood is unknown."""
         front = np.setdiff1d(self._front, _as_rows(self._singled))
         if len(front) == 0:
@@ -216,16 +242,18 @@ class Polish:
             front = np.sort(self.rng.choice(front, _LOOKED_AT, replace=False))
         return int(front[_loneliest(self.archive.objectives[front])]), "single"
 
-    def _at_random(self, rows: list[int]) -> Work | None:
+    def _at_random(self, rows: list[int]) -> Step | None:
         """The first of the rows with the fewest rounds of random changes."""
         left = [row for row in rows if self._rounds.get(row, 0) < self.effort.random_rounds]
         if not left:
             return None
         return min(left, key=lambda row: self._rounds.get(row, 0)), "random"
 
-    def _runner_up(self) -> Work | None:
+    def _runner_up(self) -> Step | None:
         """The lowest error whose neighbourhood is unknown, for a bounded number of times."""
-        errors = self.archive.objectives[:, 0]
+        errors = self.archive.objectives[:, 0].copy()
+        if self._any_within:
+            errors[~self.archive.within] = np.inf
         count = min(len(self._singled) + 1, len(errors)) - 1
         best = np.argpartition(errors, count)[: count + 1]
         left = np.setdiff1d(best, _as_rows(self._singled))
