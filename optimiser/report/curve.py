@@ -2,7 +2,6 @@
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
-from textwrap import wrap
 from typing import TYPE_CHECKING
 
 from rich.console import RenderableType
@@ -13,6 +12,7 @@ from optimiser.prediction import Prediction
 from optimiser.report.cautions import CAUTION
 from optimiser.report.curve_line import CurveLine
 from optimiser.report.look import Look
+from optimiser.report.paragraph import paragraph
 from optimiser.report.small_chart import small_chart
 from optimiser.report.tables import compare_tables, force_table, stack_table
 
@@ -57,7 +57,7 @@ def curve_report(results: Sequence[Named], look: Look, quiet: bool) -> Iterable[
     for line in small_chart(lines_of(results), look.unicode):
         yield Text(line, no_wrap=True)
     yield ""
-    yield from _paragraph(CAUTION, look, "italic")
+    yield from paragraph(CAUTION, look, "italic")
 
 
 def lines_of(results: Sequence[Named]) -> list[CurveLine]:
@@ -124,7 +124,7 @@ def _comparison(results: Sequence[Named], look: Look) -> Iterable[RenderableType
 def _about_band(result: Named, look: Look) -> Iterable[RenderableType]:
     if result.spread is not None:
         text = result.spread.sentence if result.bands is not None else NO_BAND
-        yield from _paragraph(text, look, "dim")
+        yield from paragraph(text, look, "dim")
 
 
 def _bands_compared(
@@ -137,7 +137,7 @@ def _bands_compared(
 
     seen, bands = [one.prediction for one in results], [one.bands for one in results]
     yield from bands_tables(seen, bands, names, look)
-    yield from _paragraph(f"likely: {spread.sentence}", look, "dim")
+    yield from paragraph(f"likely: {spread.sentence}", look, "dim")
     yield ""
 
 
@@ -160,20 +160,14 @@ def _size(seen: Prediction) -> str:
 
 def _remarks(seen: Prediction, look: Look) -> Iterable[RenderableType]:
     highest = seen.rise_thicknesses.argmax()
-    yield from _paragraph(
+    yield from paragraph(
         f"The face shim's edge rises {seen.edge_rise_mm[highest]:.2f} mm, "
         f"{seen.rise_thicknesses[highest]:.1f} of its thicknesses (model checked up to "
         f"{RISE_LIMIT:g}).",
         look,
     )
     for warning in seen.warnings:
-        yield from _paragraph(f"warning: {warning}", look, "yellow")
-
-
-def _paragraph(text: str, look: Look, style: str = "") -> Iterable[Text]:
-    """Lines of a sentence, the further ones indented."""
-    for line in wrap(text, look.console.width - 1, subsequent_indent="  "):
-        yield Text(line, style=style)
+        yield from paragraph(f"warning: {warning}", look, "yellow")
 
 
 def _letter(place: int) -> str:

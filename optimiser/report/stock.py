@@ -2,7 +2,6 @@
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
-from textwrap import wrap
 from typing import Any
 
 from rich.console import RenderableType
@@ -12,6 +11,7 @@ from rich.text import Text
 from optimiser.damper import Valve, warnings_for
 from optimiser.report.document import as_json
 from optimiser.report.look import Look
+from optimiser.report.paragraph import paragraph
 from optimiser.report.tables import new_table
 from optimiser.stack import Shim, Stack
 from optimiser.stock import SAME_DIAMETER_MM, SAME_THICKNESS_MM, Stock, StockItem
@@ -108,7 +108,7 @@ def stock_report(
             yield table
             yield ""
     for line in few if quiet else [*few, *stock_notes(shelf)]:
-        yield from _paragraph(line, look)
+        yield from paragraph(line, look)
     if build is not None:
         yield ""
         yield from _build(build, look)
@@ -260,11 +260,11 @@ def _build(build: Build, look: Look) -> Iterable[RenderableType]:
         table.add_row(*cells, missing, *place)
     yield table
     if build.missing:
-        yield from _paragraph(f"missing: {', '.join(build.missing)}", look, "bold red")
+        yield from paragraph(f"missing: {', '.join(build.missing)}", look, "bold red")
     elif build.price is not None:
         yield Text(f"price of these shims: {build.price:.2f}")
     for warning in build.warnings:
-        yield from _paragraph(f"warning: {warning}", look, "yellow")
+        yield from paragraph(f"warning: {warning}", look, "yellow")
 
 
 def _lying(stock: Stock, shim: Shim, clamp_mm: float, post_mm: float | None) -> list[StockItem]:
@@ -298,8 +298,3 @@ def _thickness_text(thickness_mm: float) -> str:
 
 def _clipped(text: str, width: int) -> str:
     return text if len(text) <= width else text[: width - 3] + "..."
-
-
-def _paragraph(text: str, look: Look, style: str = "") -> Iterable[Text]:
-    for line in wrap(text, look.console.width - 1, subsequent_indent="  "):
-        yield Text(line, style=style)

@@ -3,7 +3,6 @@
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from math import log
-from textwrap import wrap
 from typing import Any
 
 import numpy as np
@@ -16,6 +15,7 @@ from optimiser.prediction import Prediction, Setup
 from optimiser.report.curve_line import CurveLine, Floats, Panel
 from optimiser.report.document import as_json
 from optimiser.report.look import Look
+from optimiser.report.paragraph import paragraph
 from optimiser.report.ride import (
     feel_document,
     feel_lines,
@@ -85,10 +85,10 @@ def target_report(
         yield from [""] * (number > 0)
         yield from _single(one, look)
     for note in wished.notes:
-        yield from _paragraph(f"note: {note}", look, "yellow")
+        yield from paragraph(f"note: {note}", look, "yellow")
     if not quiet:
         yield ""
-        yield from _paragraph(_LEGEND, look, "dim")
+        yield from paragraph(_LEGEND, look, "dim")
     if wished.ride is not None:
         yield from _ride(wished.ride, look, quiet)
     if not quiet:
@@ -159,18 +159,18 @@ def target_document(seen: Sequence[Seen], wished: Wished) -> dict[str, Any]:
 
 def _single(seen: Seen, look: Look) -> Iterable[RenderableType]:
     yield Text(heading(seen), style="bold")
-    yield from _paragraph(f"wanted: {seen.target.origin}", look)
+    yield from paragraph(f"wanted: {seen.target.origin}", look)
     yield ""
     yield target_table(seen, look)
     yield ""
     if seen.feasible.far_outside:
-        yield from _paragraph(f"warning: {seen.feasible.far_outside}", look, "yellow")
+        yield from paragraph(f"warning: {seen.feasible.far_outside}", look, "yellow")
     for line in outside_lines(seen.feasible):
-        yield from _paragraph(line, look, "yellow")
+        yield from paragraph(line, look, "yellow")
     if seen.feasible.reachable:
-        yield from _paragraph(_WITHIN, look)
+        yield from paragraph(_WITHIN, look)
     for note in seen.target.notes:
-        yield from _paragraph(f"note: {note}", look, "yellow")
+        yield from paragraph(f"note: {note}", look, "yellow")
 
 
 def _ride(ride: RideWish, look: Look, quiet: bool) -> Iterable[RenderableType]:
@@ -183,7 +183,7 @@ def _ride(ride: RideWish, look: Look, quiet: bool) -> Iterable[RenderableType]:
         return
     yield ""
     for line in feel_lines(ride):
-        yield from _paragraph(line, look)
+        yield from paragraph(line, look)
 
 
 def _place_cells(seen: Seen) -> list[Text]:
@@ -279,9 +279,3 @@ def _fitted(now: Prediction) -> dict[str, Any]:
         "clicks_range": now.setup.clicks_range,
         "force_n": now.force_n,
     }
-
-
-def _paragraph(text: str, look: Look, style: str = "") -> Iterable[Text]:
-    """Lines of a sentence, the further ones indented."""
-    for line in wrap(text, look.console.width - 1, subsequent_indent="  "):
-        yield Text(line, style=style)
