@@ -16,17 +16,24 @@ from optimiser.checking import validate
 from optimiser.damper import Damper, Direction
 from optimiser.faults import BadInput
 from optimiser.files import read_text
+from optimiser.fitting.spread import Likely, Spread
+from optimiser.fitting.uncertainty import uncertainty_of_record, uncertainty_record
 from optimiser.materials import Oil, Steel
 from optimiser.prediction import Prediction, Setup
 from optimiser.search.engine import Settings
 from optimiser.search.find import Found, Order
 from optimiser.search.pair import PairOrder
-from optimiser.search.rank import RankBy
+from optimiser.search.rank import EXPLAINED, RankBy
 from optimiser.search.rules import Limits
 from optimiser.stack import Stack
 from optimiser.stock import Stock, StockItem
 from optimiser.wanted.bounds import Described
 from optimiser.wanted.target import Target
+
+#: By what a list is sorted: a rule of the search, or the chance to be near what is wanted.
+Ranking = RankBy | Literal["chance"]
+#: Stacks whose chances are compared where the list is sorted by them.
+CANDIDATES = 24
 
 
 class SavedInput(Described):
@@ -74,13 +81,49 @@ class SavedTarget(Described):
         )
 
 
+class SavedBands(Described):
+    """What the bands of one direction are drawn from.
+
+    ``names`` of the uncertain numbers of the damper with their ``covariance``, and the error of
+    the model, %, as in the record of a fit; ``origin`` of these in words. ``within_percent``: the
+    error, r.m.s., a stack should be within.
+    """
+
+    names: tuple[str, ...]
+    covariance: tuple[tuple[float, ...], ...]
+    model_percent: float
+    origin: str
+    samples: int = Field(ge=20, le=100_000)
+    within_percent: float = Field(gt=0, le=100)
+
+    @model_validator(mode="after")
+    def _usable(self) -> Self:
+        self.spread(0)
+        return self
+
+    @classmethod
+    def of(cls, spread: Spread, within_percent: float) -> Self:
+        """What a spread is drawn from."""
+        record = uncertainty_record(spread.known)
+        return cls(
+            **record, origin=spread.origin, samples=spread.samples, within_percent=within_percent
+        )
+
+    def spread(self, seed: int) -> Spread:
+        """What bands are drawn from. Raises BadInput."""
+        known = uncertainty_of_record(self.model_dump(), "bands")
+        return Spread(known, self.origin, self.samples, seed)
+
+
 class SavedCircuit(Described):
-    """One direction: what is wanted of it, the stack fitted now (revalve mode) and the clicks."""
+    """One direction: what is wanted of it, the stack fitted now (revalve mode), the clicks, and
+    what bands are drawn from, where they are wanted."""
 
     direction: Direction
     target: SavedTarget
     fitted: Stack | None = None
     click_range: tuple[int, int] = Field(description="first and last click allowed")
+    bands: SavedBands | None = None
 
 
 class SavedOrder(Described):
@@ -103,7 +146,7 @@ class SavedOrder(Described):
     stages: tuple[int, ...]
     height_min_mm: float | None = None
     height_max_mm: float | None = None
-    rank_by: RankBy = "default"
+    rank_by: Ranking = "default"
     rows: int = Field(ge=1, le=100)
     seed: int = Field(ge=0)
     evaluations: int = Field(ge=100, le=100_000_000)
@@ -131,6 +174,15 @@ class SavedOrder(Described):
         _ = self.limits
         return self
 
+    @model_validator(mode="after")
+    def _bands_for_all(self) -> Self:
+        banded = {circuit.bands is not None for circuit in self.circuits}
+        if len(banded) > 1:
+            raise BadInput("circuits: only one has bands; allowed: all or none")
+        if self.rank_by == "chance" and True not in banded:
+            raise BadInput("rank_by is chance, which needs the bands of every circuit")
+        return self
+
     @property
     def limits(self) -> Limits:
         """What the user allows. Raises BadInput."""
@@ -142,6 +194,32 @@ class SavedOrder(Described):
     def drawer(self) -> Stock:
         """The stock list."""
         return Stock(self.stock)
+
+    @property
+    def whole_drawer(self) -> Stock:
+        """The stock, and the shims of the fitted stacks, which come out of the damper."""
+        stock = self.drawer
+        for circuit in self.circuits:
+            if circuit.fitted is not None:
+                stock = stock.put_back(circuit.fitted, post_mm(self.setup(circuit)))
+        return stock
+
+    @property
+    def rank_rule(self) -> str:
+        """How the list is sorted, in one sentence."""
+        bands = self.circuits[0].bands
+        if self.rank_by != "chance" or bands is None:
+            return EXPLAINED[self.rank_by if self.rank_by != "chance" else "default"]
+        text = (
+            f"Ranked by the chance to be within {bands.within_percent:g} %, then error, among the "
+            f"{max(self.rows, CANDIDATES)} stacks that lead without it (--rank-by default)"
+        )
+        both = "; the first of both directions are the two likeliest together"
+        return f"{text}{both if len(self.circuits) > 1 else ''}."
+
+    def spread(self, circuit: SavedCircuit) -> Spread | None:
+        """What the bands of one direction are drawn from; None where none are wanted."""
+        return None if circuit.bands is None else circuit.bands.spread(self.seed)
 
     def setup(self, circuit: SavedCircuit) -> Setup:
         """One direction of the damper, with steel, oil and temperature."""
@@ -158,6 +236,7 @@ class SavedOrder(Described):
 
     def _order(self, circuit: SavedCircuit, workers: int) -> Order:
         setup = self.setup(circuit)
+        by_chance = self.rank_by == "chance"
         return Order(
             setup,
             circuit.target.target(circuit.direction),
@@ -165,8 +244,8 @@ class SavedOrder(Described):
             circuit.fitted,
             self.limits,
             circuit.click_range,
-            self.rank_by,
-            self.rows,
+            "default" if self.rank_by == "chance" else self.rank_by,
+            max(self.rows, CANDIDATES) if by_chance else self.rows,
             self.seed,
             workers,
             Settings(evaluations=self.evaluations),
@@ -181,7 +260,7 @@ class SavedOrder(Described):
 class Answer:
     """An order and what was found, one entry a circuit; ``best`` is stack 1 in full.
 
-    ``seconds`` the user waited, ``cut_short`` by the user.
+    ``seconds`` the user waited, ``cut_short`` by the user; ``likely`` empty without bands.
     """
 
     order: SavedOrder
@@ -190,6 +269,7 @@ class Answer:
     seconds: float
     cut_short: bool
     workers: int
+    likely: tuple[Likely, ...] = ()
 
     @property
     def evaluations(self) -> int:

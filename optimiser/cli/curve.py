@@ -4,6 +4,12 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from optimiser.cli.band_options import (
+    BandsOption,
+    check_seed,
+    note_when_preparing_bands,
+    record_for,
+)
 from optimiser.cli.notes import note, note_when_preparing, print_document
 from optimiser.cli.options import (
     DEFAULT_DAMPER,
@@ -15,6 +21,7 @@ from optimiser.cli.options import (
     OilOption,
     OilTempOption,
     QuietOption,
+    SeedOption,
     SteelOption,
     VelocitiesOption,
 )
@@ -22,6 +29,8 @@ from optimiser.cli.sheet_options import SheetOption, check_page_path, command_of
 from optimiser.faults import BadInput
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from optimiser.cli.inputs import Given
     from optimiser.damper import Direction
     from optimiser.prediction import Setup
@@ -62,6 +71,8 @@ def curve(
     clicks: ClicksOption = None,
     oil_temp_c: OilTempOption = None,
     velocities: VelocitiesOption = None,
+    bands: BandsOption = False,
+    seed: SeedOption = 0,
     steel: SteelOption = None,
     oil: OilOption = None,
     chart: ChartOption = None,
@@ -80,12 +91,16 @@ def curve(
         chart_format(chart)
     if sheet is not None:
         check_page_path(sheet, "--sheet")
+    check_seed(seed, bands)
     wanted = parse_velocities(velocities) if velocities is not None else None
     given = read_given(damper, steel, oil, oil_temp_c)
     jobs = curve_jobs(given, circuit, stack or [], shim or [])
     check_clicks([setup for _label, setup, _stack in jobs], clicks)
     note_when_preparing(quiet)
     results = predict_all(jobs, wanted, clicks)
+    if bands:
+        note_when_preparing_bands(quiet)
+        results = with_bands(results, record_for(given, damper), seed)
     if chart is not None:
         _write_chart(chart, results)
         note(f"chart written to {chart}", quiet)
@@ -172,6 +187,20 @@ def predict_all(
     ]
 
 
+def with_bands(results: "list[Named]", record: "Path | None", seed: int) -> "list[Named]":
+    """The same with their likely spread, drawn from the record of a fit or from usual errors."""
+    from dataclasses import replace
+
+    from optimiser.fit_records import spread_of
+
+    shown = []
+    for result in results:
+        spread = spread_of(result.prediction.setup, record, seed=seed)
+        bands = spread.bands(result.prediction)
+        shown.append(replace(result, spread=spread, bands=bands))
+    return shown
+
+
 def _write_chart(path: "ChartOption", results: "list[Named]") -> None:
     import numpy as np
 
@@ -188,7 +217,9 @@ def _write_chart(path: "ChartOption", results: "list[Named]") -> None:
         fastest = seen.velocity_m_s.max()
         between = fastest * np.linspace(0.0, 1.0, 61)[1:] ** 1.5
         velocity = np.unique(np.concatenate([between, seen.velocity_m_s]))
-        smooth.append(Named(result.label, predict(seen.setup, seen.stack, velocity, seen.clicks)))
+        fine = predict(seen.setup, seen.stack, velocity, seen.clicks)
+        bands = result.spread.bands(fine) if result.spread else None
+        smooth.append(Named(result.label, fine, result.spread, bands))
     atomic_write_bytes(path, chart_bytes(panels_of(smooth), chart_format(path)))
 
 

@@ -5,6 +5,7 @@ from typing import TYPE_CHECKING
 
 import typer
 
+from optimiser.cli.band_options import BandsOption, WithinOption, note_when_preparing_bands
 from optimiser.cli.find_options import (
     DEFAULT_EVALUATIONS,
     MOST_USUAL_WORKERS,
@@ -22,7 +23,6 @@ from optimiser.cli.find_options import (
     RevalveOption,
     RowsOption,
     SearchedCircuitOption,
-    SeedOption,
     StageChoice,
     StagesOption,
     TakenAtOption,
@@ -37,6 +37,7 @@ from optimiser.cli.options import (
     OilOption,
     OilTempOption,
     QuietOption,
+    SeedOption,
     SteelOption,
     VelocitiesOption,
 )
@@ -99,6 +100,8 @@ def find(
     face_min: FaceMinOption = 1,
     stages: StagesOption = StageChoice.both,
     rank_by: RankByOption = Rank.default,
+    bands: BandsOption = False,
+    within: WithinOption = None,
     rows: RowsOption = 8,
     seed: SeedOption = 0,
     workers: WorkersOption = None,
@@ -134,6 +137,7 @@ def find(
     asked = Asked(
         damper, steel, oil, oil_temp_c, circuit, stock, revalve, clicks, click_range, parts,
         face_min, stages, height_min_mm, height_max_mm, rank_by, rows, seed, evaluations,
+        bands, within,
     )  # fmt: skip
     check_numbers(asked, workers)
     if again is not None:
@@ -188,6 +192,8 @@ def _answer(
     check_buildable(order)
     note_when_preparing(quiet)
     check_within_reach(order)
+    if order.circuits[0].bands is not None:
+        note_when_preparing_bands(quiet)
     answer = _search(order, workers or _usual_workers(), quiet or json)
     if out is not None:
         for file in write_folder(out, answer, _chart(answer, "svg")):
@@ -208,6 +214,7 @@ def _search(order: "SavedOrder", workers: int, silent: bool) -> "Answer":
     """Run the search, with a line of progress, until it is done or cut short."""
     from time import perf_counter
 
+    from optimiser.chances import weighed
     from optimiser.cli.progress import Interrupts, ProgressLine
     from optimiser.results import Answer
     from optimiser.search.find import find as find_one
@@ -220,13 +227,15 @@ def _search(order: "SavedOrder", workers: int, silent: bool) -> "Answer":
             found = [pair.first, pair.second]
         else:
             found = [find_one(order.orders(workers)[0], line, interrupts.stop)]
+    shown, likely = weighed(order, found, workers)
     return Answer(
         order,
-        tuple(found),
-        tuple(one.details(0) for one in found),
+        shown,
+        tuple(one.details(0) for one in shown),
         perf_counter() - began,
         interrupts.heeded or any(one.cut_short for one in found),
         workers,
+        likely,
     )
 
 
@@ -238,8 +247,8 @@ def _chart(answer: "Answer", file_format: "Format") -> bytes:
     from optimiser.report.chart import chart_bytes
     from optimiser.report.find import CHARTED, panels_of
 
-    curves = []
-    for found in answer.found:
+    curves, bands = [], []
+    for place, found in enumerate(answer.found):
         wanted = found.order.target.velocity_m_s
         velocity = np.unique(np.concatenate([np.geomspace(wanted[0], wanted[-1], 50), wanted]))
         curves.append(
@@ -248,7 +257,8 @@ def _chart(answer: "Answer", file_format: "Format") -> bytes:
                 for proposal in found.proposals[:CHARTED]
             ]
         )
-    return chart_bytes(panels_of(answer, curves), file_format)
+        bands.append(answer.likely[place].spread.bands(curves[-1][0]) if answer.likely else None)
+    return chart_bytes(panels_of(answer, curves, bands), file_format)
 
 
 def _usual_workers() -> int:

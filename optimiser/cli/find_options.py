@@ -27,6 +27,7 @@ class Rank(StrEnum):
     error = "error"
     parts = "parts"
     stress = "stress"
+    chance = "chance"
 
 
 SearchedCircuitOption = Annotated[
@@ -84,15 +85,14 @@ StagesOption = Annotated[
     typer.Option("--stages", help="One stage, two with a crossover shim between them, or both."),
 ]
 RankByOption = Annotated[
-    Rank, typer.Option("--rank-by", help="What comes first; the rule is said under the table.")
-]
-RowsOption = Annotated[int, typer.Option("--rows", metavar="N", help="Most stacks in the list.")]
-SeedOption = Annotated[
-    int,
+    Rank,
     typer.Option(
-        "--seed", metavar="N", help="Start of the random numbers: same seed, same answer."
+        "--rank-by",
+        help="What comes first; the rule is said under the table. chance: to be --within, "
+        "which draws --bands.",
     ),
 ]
+RowsOption = Annotated[int, typer.Option("--rows", metavar="N", help="Most stacks in the list.")]
 WorkersOption = Annotated[
     int | None,
     typer.Option(

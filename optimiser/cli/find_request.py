@@ -3,6 +3,7 @@
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from optimiser.cli.band_options import MOST_SEED, record_for
 from optimiser.cli.find_options import Rank, StageChoice
 from optimiser.cli.inputs import Given, check_clicks, read_given, short_name
 from optimiser.cli.options import CircuitChoice
@@ -10,8 +11,11 @@ from optimiser.cli.wish_options import FITTED, wanted_from
 from optimiser.damper import Direction
 from optimiser.faults import BadInput, NothingBuildable
 from optimiser.files import read_stack, read_stock
+from optimiser.fit_records import spread_of
+from optimiser.fitting.spread import USUAL_WITHIN
 from optimiser.prediction import Setup
 from optimiser.results import (
+    SavedBands,
     SavedCircuit,
     SavedInput,
     SavedOrder,
@@ -35,7 +39,6 @@ from optimiser.wanted.target import Target
 FEWEST_EVALUATIONS, MOST_EVALUATIONS = 100, 100_000_000
 MOST_ROWS = 100
 MOST_WORKERS = 64
-MOST_SEED = 2**32 - 1
 
 
 @dataclass(frozen=True)
@@ -60,6 +63,13 @@ class Asked:
     rows: int
     seed: int
     evaluations: int
+    bands: bool = False
+    within_percent: float | None = None
+
+    @property
+    def banded(self) -> bool:
+        """Whether bands are wanted."""
+        return self.bands or self.rank_by is Rank.chance
 
 
 def check_numbers(asked: Asked, workers: int | None) -> None:
@@ -81,6 +91,10 @@ def check_numbers(asked: Asked, workers: int | None) -> None:
     ):
         if height is not None and not 0.0 <= height <= 100.0:
             faults.append(f"{option} is {height:g}; allowed: 0 to 100 mm")
+    if asked.within_percent is not None and not 0.0 < asked.within_percent <= 100.0:
+        faults.append(f"--within is {asked.within_percent:g}; allowed: above 0 up to 100 %")
+    if asked.within_percent is not None and not asked.banded:
+        faults.append("--within needs a band; allowed: beside --bands or --rank-by chance")
     if asked.clicks is not None and asked.click_range is not None:
         faults.append("--clicks and --click-range both say where the adjuster is; allowed: one")
     for check in (lambda: _limits(asked), lambda: _parse_range(asked.click_range)):
@@ -106,6 +120,7 @@ def order_of(said: Said, asked: Asked) -> SavedOrder:
     ranges = _click_ranges(asked, setups)
     fitted = _fitted(said, asked, setups)
     limits = _limits(asked)
+    banded = _bands(asked, given, setups)
     return SavedOrder(
         damper=given.damper,
         steel=given.steel,
@@ -119,6 +134,7 @@ def order_of(said: Said, asked: Asked) -> SavedOrder:
                 target=SavedTarget.of(target),
                 fitted=fitted.get(setup.direction),
                 click_range=clicks,
+                bands=banded.get(setup.direction),
             )
             for setup, target, clicks in zip(setups, wished.targets, ranges, strict=True)
         ),
@@ -134,6 +150,15 @@ def order_of(said: Said, asked: Asked) -> SavedOrder:
         notes=wished.notes,
         inputs=tuple(SavedInput(**vars(file)) for file in given.files),
     )
+
+
+def _bands(asked: Asked, given: Given, setups: Sequence[Setup]) -> dict[Direction, SavedBands]:
+    """What bands are drawn from, by direction; empty where none are wanted. Raises BadInput."""
+    if not asked.banded:
+        return {}
+    within = USUAL_WITHIN if asked.within_percent is None else asked.within_percent
+    record = record_for(given, asked.damper)
+    return {setup.direction: SavedBands.of(spread_of(setup, record), within) for setup in setups}
 
 
 def _read(asked: Asked) -> tuple[Given, Stock]:

@@ -17,7 +17,7 @@ from optimiser.faults import BadInput, NothingBuildable
 P = ParamSpec("P")
 
 #: Every command, in the order of the help page.
-COMMANDS = ("init", "curve", "find", "target", "stock")
+COMMANDS = ("init", "curve", "find", "sheet", "target", "table", "fit", "stock")
 
 EXIT_NOTHING_BUILDABLE = 1
 EXIT_BAD_INPUT = 2

@@ -42,6 +42,18 @@ def solver_is_prepared() -> bool:
     return max(ages, default=-1.0) >= 0.0
 
 
+def is_compiled(module: ModuleType, kernel: str) -> bool:
+    """Whether this version of one kernel, by name, lies compiled on disk."""
+    import numba
+
+    source = Path(str(module.__file__))
+    compiled = getattr(module, kernel)
+    if numba.config.DISABLE_JIT:
+        return True
+    found = Path(compiled.stats.cache_path).glob(f"{source.stem}.{kernel}-*.nbi")
+    return any(file.stat().st_mtime >= source.stat().st_mtime for file in found)
+
+
 def _ages(module: ModuleType) -> list[float]:
     """Seconds by which a module's newest compiled kernel is newer than its source; [] without."""
     kernels = [item for item in vars(module).values() if hasattr(item, "py_func")]

@@ -47,6 +47,12 @@ VelocitiesOption = Annotated[
         "--velocities", metavar="V,V,...", help="Shaft velocities, m/s, such as 0.05,0.1,0.2."
     ),
 ]
+SeedOption = Annotated[
+    int,
+    typer.Option(
+        "--seed", metavar="N", help="Start of the random numbers: same seed, same answer."
+    ),
+]
 ChartOption = Annotated[
     Path | None,
     typer.Option("--chart", metavar="FILE", help="Also draw a chart: FILE.svg, .png or .pdf."),

@@ -4,7 +4,6 @@ import os
 import signal
 import threading
 from collections.abc import Callable
-from pathlib import Path
 from time import perf_counter
 from types import FrameType, TracebackType
 from typing import Self
@@ -13,7 +12,7 @@ from rich.console import Console
 from rich.live import Live
 from rich.text import Text
 
-from optimiser.cli.notes import note
+from optimiser.cli.notes import is_compiled, note
 from optimiser.search.budget import Progress
 
 PREPARING = "preparing the search: this happens once and takes about a minute ..."
@@ -25,22 +24,10 @@ _STDERR = 2
 
 def note_when_preparing(quiet: bool = False) -> None:
     """Say so when the search's solver will be compiled first, once per installation."""
-    if not _is_prepared():
-        note(PREPARING, quiet)
-
-
-def _is_prepared() -> bool:
-    """Whether this version's search kernel lies compiled on disk."""
-    import numba
-
     from optimiser.search import evaluate
 
-    if numba.config.DISABLE_JIT:
-        return True
-    source = Path(evaluate.__file__)
-    folder = Path(getattr(evaluate.score, "stats").cache_path)  # noqa: B009  numba's, untyped
-    compiled = folder.glob(f"{source.stem}.score-*.nbi")
-    return any(file.stat().st_mtime >= source.stat().st_mtime for file in compiled)
+    if not is_compiled(evaluate, "score"):
+        note(PREPARING, quiet)
 
 
 class Interrupts:

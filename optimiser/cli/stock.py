@@ -4,9 +4,30 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from optimiser.cli.buying import (
+    DEFAULT_TOLERANCE,
+    Question,
+    ToBuyOption,
+    ToleranceOption,
+    WhatToBuyOption,
+    answer_what_to_buy,
+)
 from optimiser.cli.notes import print_document
 from optimiser.cli.options import CircuitChoice, JsonOption, QuietOption
-from optimiser.cli.wish_options import DEFAULT_STOCK, FITTED, StockOption
+from optimiser.cli.wish_options import (
+    DEFAULT_STOCK,
+    FITTED,
+    FeelOption,
+    FrameOption,
+    HighOption,
+    KneeOption,
+    LowOption,
+    MidOption,
+    RiderKgOption,
+    SagOption,
+    StockOption,
+    TargetOption,
+)
 from optimiser.faults import BadInput, NothingBuildable
 
 if TYPE_CHECKING:
@@ -55,18 +76,46 @@ def stock(
             help="Shims to build: quantity x outer mm x thickness mm. Repeat it, clamp shim last.",
         ),
     ] = None,
+    what_to_buy: WhatToBuyOption = False,
+    to_buy: ToBuyOption = None,
+    tolerance: ToleranceOption = DEFAULT_TOLERANCE,
+    target: TargetOption = None,
+    low: LowOption = None,
+    mid: MidOption = None,
+    high: HighOption = None,
+    knee: KneeOption = None,
+    rider_kg: RiderKgOption = None,
+    frame: FrameOption = None,
+    feel: FeelOption = None,
+    sag: SagOption = None,
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
     """What is in the drawer, what a build takes from it and what is missing.
 
     A list with faults is refused with all of them named. When shims are missing for the build,
-    the exit code is 1.
+    the exit code is 1. With --what-to-buy: which sizes would bring a search nearer to its target.
     """
     from optimiser.report.look import look_of
     from optimiser.report.stock import build_of, show_stock, stock_document
 
-    _check_options(post, damper, circuit, stack, shim)
+    _check_options(post, damper, circuit, stack, shim, what_to_buy)
+    wishes = (target, low, mid, high, knee, rider_kg, frame, feel, sag, to_buy)
+    if what_to_buy:
+        from optimiser.wanted.said import Said
+
+        said = Said(
+            targets=tuple(target or ()), low_percent=low, mid_percent=mid, high_percent=high,
+            knee_percent=knee, rider_kg=rider_kg, frame=frame, feel=feel, sag_percent=sag,
+        )  # fmt: skip
+        question = Question(stock, damper, circuit, said, to_buy, tolerance)
+        answer_what_to_buy(question, json, quiet)
+        return
+    if any(wish is not None for wish in wishes) or tolerance != DEFAULT_TOLERANCE:
+        raise BadInput(
+            "what is wanted, --to-buy and --tolerance belong to --what-to-buy; name it, or leave "
+            "them out"
+        )
     shelf, files = _shelf(stock, post, damper, circuit)
     build: Build | None = None
     if stack is not None or shim:
@@ -93,13 +142,19 @@ def _check_options(
     circuit: CircuitChoice | None,
     stack: str | None,
     shim: list[str] | None,
+    what_to_buy: bool = False,
 ) -> None:
     faults = []
+    if what_to_buy and (post is not None or stack is not None or shim):
+        faults.append(
+            "--what-to-buy stands for itself; allowed beside it: --damper and --circuit, not "
+            "--post, --stack or --shim"
+        )
     if post is not None and damper is not None:
         faults.append("--post and --damper both say which post; allowed: one of them")
     if post is not None and not POST_FROM_MM <= post <= POST_TO_MM:
         faults.append(f"--post is {post:g}; allowed: {POST_FROM_MM:g} to {POST_TO_MM:g} mm")
-    if circuit is not None and damper is None:
+    if circuit is not None and damper is None and not what_to_buy:
         faults.append("--circuit belongs to --damper; name one, or leave it out")
     if circuit is CircuitChoice.both:
         faults.append("--circuit is both; allowed: compression or rebound, which are two posts")

@@ -14,13 +14,15 @@ from optimiser.search.find import Found, Proposal
 #: Limits beyond any damper are not worth their digits.
 _MOST_PRINTED_N = 99_999.0
 _GAP = 2
+_SIZES = 7  # place of that column
 
 
 def ranked_table(found: Found, look: Look, likely: Likely | None = None) -> Table:
     """One row a stack, best first; with the chance to be within an error where it is known."""
     revalve = any(proposal.changed is not None for proposal in found.proposals)
     marked = any(proposal.outside_model for proposal in found.proposals)
-    headings = ["", "error\n%", "worst\n%", "low\n%", "mid\n%", "high\n%", "parts\n", "sizes\n"]
+    headings = ["", "error\n%", "worst\n%", "low\n%", "mid\n%", "high\n%", "parts\n"]
+    headings += [] if likely else ["sizes\n"]
     headings += ["util.\n", "clicks\n", "height\nmm", "vari-\nants"]
     headings += [f"within\n{likely.within_percent:g} %"] if likely else []
     headings += ["chan-\nged"] if revalve else []
@@ -30,6 +32,8 @@ def ranked_table(found: Found, look: Look, likely: Likely | None = None) -> Tabl
         table.padding = (0, 0, 0, 0)
     for place, proposal in enumerate(found.proposals, start=1):
         cells = _ranked_cells(place, proposal, found.order.setup.clicks_range > 0)
+        if likely:
+            del cells[_SIZES]  # there is no room for both
         cells += [chance_text(likely, place - 1)] if likely else []
         cells += [Text(str(proposal.changed))] if revalve else []
         cells += [Text("outside" * proposal.outside_model, style="yellow")] if marked else []
@@ -39,10 +43,10 @@ def ranked_table(found: Found, look: Look, likely: Likely | None = None) -> Tabl
 
 def _ranked_cells(place: int, proposal: Proposal, adjuster: bool) -> list[Text]:
     bands = proposal.bands
-    worn = proposal.utilisation >= 1.0
+    worn, error = proposal.utilisation >= 1.0, proposal.error_percent
     return [
         Text(str(place)),
-        Text(f"{proposal.error_percent:.2f}", style="bold"),
+        Text(f"{error:.2f}" if error < 100.0 else f"{error:.0f}", style="bold"),
         Text(f"{proposal.worst.percent:+.1f}"),
         *(
             Text(percent_text(value))

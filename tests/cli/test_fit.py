@@ -11,19 +11,10 @@ from optimiser.files import read_damper
 from tests.cli.calling import Called, call, lines_wider_than
 
 
-@pytest.fixture(autouse=True)
-def with_fit(monkeypatch: pytest.MonkeyPatch) -> None:
-    """The command is there whether or not it is among the shipped ones yet."""
-    monkeypatch.setattr(main, "COMMANDS", tuple(dict.fromkeys((*main.COMMANDS, "fit"))))
-
-
 @pytest.fixture(scope="module")
 def written(tmp_path_factory: pytest.TempPathFactory) -> tuple[Called, Path]:
-    patch = pytest.MonkeyPatch()
-    patch.setattr(main, "COMMANDS", tuple(dict.fromkeys((*main.COMMANDS, "fit"))))
     out = tmp_path_factory.mktemp("fit") / "mine.toml"
     called = call("fit", "rear-monotube", "--out", str(out))
-    patch.undo()
     return called, out
 
 

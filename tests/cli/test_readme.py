@@ -40,8 +40,11 @@ def test_options_of_the_other_examples_exist(example: str) -> None:
 
 
 @pytest.mark.parametrize(("command", "shown"), SHOWN)
-def test_shown_output_is_the_programs(command: str, shown: str) -> None:
+def test_shown_output_is_the_programs(
+    command: str, shown: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     """Word for word; numbers within 2 %, so that a better solver does not make the page wrong."""
+    monkeypatch.chdir(tmp_path)
     printed = call(*shlex.split(command)).out
     if command.startswith("find"):
         assert _frame(printed) == _frame(shown)

@@ -59,6 +59,20 @@ def test_target_prediction_band_and_measurement_are_all_drawn() -> None:
     assert axes.get_ylabel() == "force, N"
 
 
+def test_the_likely_spread_is_told_from_the_click_range() -> None:
+    axes = Figure().add_subplot()
+    clicks = {"low_n": 900.0 * VELOCITY, "high_n": 1100.0 * VELOCITY}
+    spread = {"p05_n": 800.0 * VELOCITY, "p95_n": 1200.0 * VELOCITY}
+    draw_panel(axes, Panel("title", (_line("one", **clicks, **spread), _line("two", **spread))))
+    filled, first, second = axes.collections
+    assert filled.get_hatch() is None
+    assert (first.get_hatch(), second.get_hatch()) == ("..", None)
+    assert (first.get_facecolor().size, second.get_facecolor().size) == (0, 0)
+    assert first.get_paths()[0].vertices[:, 1].max() == pytest.approx(1200.0 * VELOCITY[-1])
+    _handles, labels = axes.get_legend_handles_labels()
+    assert [label for label in labels if "likely" in label] == ["likely spread of one, 5 to 95 %"]
+
+
 def test_locked_forces_leave_a_gap() -> None:
     force = np.where(VELOCITY < 0.5, np.inf, 500.0)
     axes = Figure().add_subplot()

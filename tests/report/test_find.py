@@ -11,6 +11,9 @@ from rich.console import Console
 
 from optimiser.cli.inputs import read_given
 from optimiser.files import read_stock
+from optimiser.fitting.bands import Bands
+from optimiser.fitting.spread import Likely, Spread
+from optimiser.fitting.uncertainty import usual_uncertainty
 from optimiser.prediction import predict
 from optimiser.report.find import (
     exchanged_shims,
@@ -88,6 +91,52 @@ def test_fits_80_columns_with_every_column_shown(answer: Answer) -> None:
     alone = _only(answer, rise=2.7, utilisation=11.5, error_percent=1234.5)
     for text in (_printed(answer), _printed(alone), _printed(alone, unicode=False)):
         assert not lines_wider_than(text, 80)
+
+
+def _banded(answer: Answer) -> Answer:
+    """The same with a band and a chance for every stack; none for the last."""
+    likely = []
+    for found in answer.found:
+        velocity, force = found.order.target.velocity_m_s, found.proposals[0].force_n
+        band = Bands(velocity, 0.9 * force, force, 1.1 * force, force, force[None], 0)
+        count = len(found.proposals)
+        spread = Spread(usual_uncertainty(found.order.setup), "somewhere")
+        chance = (1.0, *[0.5] * (count - 2), 0.0)
+        likely.append(Likely(spread, 12.5, (*[band] * (count - 1), None), chance))
+    return replace(answer, likely=tuple(likely))
+
+
+def test_bands_fit_80_columns_beside_everything_else(answer: Answer) -> None:
+    banded = _banded(answer)
+    alone = _only(banded, rise=2.7, utilisation=11.5, error_percent=1234.5)
+    for shown in (banded, alone):
+        assert not lines_wider_than(_printed(shown), 80)
+    row = _row(_printed(alone))
+    assert row[-4:] == ["100", "%", str(alone.found[0].proposals[0].changed), "outside"]
+    said = " ".join(_printed(banded).split())
+    assert "within 12.5 %" in said
+    assert said.count("1000 samples (seed 0), from somewhere") == len(banded.found)
+
+
+def test_bands_in_the_document_and_the_chart(answer: Answer) -> None:
+    banded = _banded(answer)
+    document = find_document(banded)
+    force = banded.found[0].proposals[0].force_n
+    assert document["stacks"][0]["force_p05_n"] == pytest.approx(0.9 * force)
+    assert document["stacks"][0]["chance_within"] == 1.0
+    assert document["stacks"][-1]["force_p95_n"] is None
+    assert document["stacks"][-1]["chance_within"] is None
+    assert (document["within_percent"], document["samples"]) == (12.5, 1000)
+    assert not {"within_percent", "samples"} & set(find_document(answer))
+    first = [one.proposals[0] for one in banded.found]
+    curves = [
+        [_curve(found, p, [0.1, 0.5])] * 2 for found, p in zip(banded.found, first, strict=True)
+    ]
+    bands = [one.bands[0] for one in banded.likely]
+    lines = panels_of(banded, curves, bands)[1].lines
+    assert bands[1] is not None
+    assert lines[1].p05_n is bands[1].p05_n
+    assert lines[2].p05_n is None
 
 
 def test_plain_ascii_where_asked_for(answer: Answer) -> None:

@@ -10,7 +10,9 @@ from rich.table import Table
 
 from optimiser.damper import Direction
 from optimiser.files import read_damper, read_oil, read_steel
+from optimiser.fitting.bands import Bands
 from optimiser.prediction import Prediction, Setup, predict
+from optimiser.report.band import bands_tables
 from optimiser.report.look import Look, look_of
 from optimiser.report.tables import compare_tables, force_table, force_text, stack_table
 
@@ -61,6 +63,34 @@ def test_force_table_needs_at_most_80_columns_whatever_the_numbers(seen: Predict
     assert _natural_width(stack_table(huge, _look())) <= 80
     for table in compare_tables([huge] * 9, list("ABCDEFGHI"), _look()):
         assert _natural_width(table) <= 80
+    wide = _band(huge)
+    assert _natural_width(force_table(huge, _look(), wide)) <= 80
+    calm = replace(huge, cavitation_m_s=None, rise_thicknesses=0.0 * huge.rise_thicknesses)
+    assert _natural_width(force_table(calm, _look(), wide)) <= 80
+    for table in bands_tables([huge] * 9, [wide] * 9, list("ABCDEFGHI"), _look()):
+        assert _natural_width(table) <= 80
+
+
+def _band(seen: Prediction) -> Bands:
+    """A band of 10 % to either side."""
+    force = seen.force_n
+    return Bands(seen.velocity_m_s, 0.9 * force, force, 1.1 * force, force, force[None], 0)
+
+
+def test_bands_stand_beside_the_force(seen: Prediction) -> None:
+    rows = _printed(force_table(seen, _look(), _band(seen)), _look())[3:]
+    force = seen.force_n[1]
+    assert rows[1].split()[1:4] == [force_text(f) for f in (force, 0.9 * force, 1.1 * force)]
+    (table,) = bands_tables([seen, seen], [_band(seen), None], ["A", "B"], _look())
+    row = _printed(table, _look())[4]
+    assert row.split()[1:] == [
+        force_text(0.9 * force),
+        "to",
+        force_text(1.1 * force),
+        "-",
+        "to",
+        "-",
+    ]
 
 
 def test_force_table_shows_the_prediction(seen: Prediction) -> None:
