@@ -40,7 +40,8 @@ ToleranceOption = Annotated[
 
 DEFAULT_TOLERANCE = 3.0
 LEAST_TOLERANCE, MOST_TOLERANCE = 0.1, 50.0
-_EVALUATIONS = 10_000
+#: Half of the stacks tried for each number of stages.
+EVALUATIONS = 3000
 
 
 @dataclass(frozen=True)
@@ -112,7 +113,7 @@ def _advice(question: Question, given: "Given") -> "Advice":
         wished.targets[0],
         tuple(stock.for_post(post.post_mm)),
         rank_by="error",
-        settings=Settings(evaluations=_EVALUATIONS),
+        settings=Settings(evaluations=EVALUATIONS),
     )
     executor, journal = Here(), Forgetful()
     need = need_of(order, post.post_mm, executor, journal)

@@ -4,7 +4,6 @@ from dataclasses import dataclass
 from typing import Any
 
 from optimiser.mechanics.deflect import RISE_LIMIT
-from optimiser.search.find import Proposal
 from optimiser.stack import Group, Shim, Stack
 
 
@@ -50,20 +49,6 @@ def candidate_from(record: dict[str, Any]) -> Candidate:
         Group(int(n), Shim(outer, thick, hole)) for n, outer, thick, hole in record["stack"]
     )
     return Candidate(**{**record, "stack": Stack(groups), "force_n": tuple(record["force_n"])})
-
-
-def candidate_of(proposal: Proposal) -> Candidate:
-    """A search's proposal as a candidate."""
-    return Candidate(
-        proposal.stack,
-        proposal.clicks,
-        proposal.error_percent,
-        proposal.worst.percent,
-        proposal.worst.velocity_m_s,
-        proposal.utilisation,
-        proposal.rise,
-        tuple(proposal.force_n.tolist()),
-    )
 
 
 def within(candidates: tuple[Candidate, ...], tolerance_percent: float) -> tuple[Candidate, ...]:

@@ -18,9 +18,6 @@ from optimiser.wanted.feel import Feel
 from optimiser.wanted.frame import Frame
 from optimiser.wanted.rider import Rider
 
-#: Proposals asked of every search: all it checked, as the best may not last.
-ROWS = 80
-
 
 @dataclass(frozen=True, order=True)
 class Place:
@@ -89,8 +86,6 @@ def cells_of(materials: Materials, derived: dict[tuple[int, int], Derived]) -> d
                 tuple(materials.stock.for_post(materials.post_mm(c))),
                 limits=Limits(parts=request.parts),
                 click_range=None if request.clicks is None else (request.clicks, request.clicks),
-                rank_by="error",
-                rows=ROWS,
                 seed=request.seed,
                 settings=Settings(evaluations=request.evaluations),
             )

@@ -17,19 +17,25 @@ from optimiser.tuning.candidate import Candidate
 
 
 class Judge:
-    """Both models on the space of an order, with the quick one corrected by one good stack.
+    """Both models on the space of an order; the quick one can be corrected by one good stack.
 
     ``evaluations`` counts the stacks judged.
     """
 
-    def __init__(self, order: Order, good: Stack) -> None:
+    def __init__(self, order: Order, good: Stack | None = None) -> None:
         self.order = order
         self.space = Space.of(order.lines, order.setup.valve, order.limits)
         self.evaluations = 0
         clicks = order.click_range or middle_clicks(order.setup)
         self._quick = ModelEvaluator(order.setup, self.space, order.target, clicks)
         self._reported = ReportedEvaluator(order.setup, self.space, order.target, clicks)
-        self._correct_by(good)
+        if good is not None:
+            self.correct_by(good)
+
+    @property
+    def model(self) -> ModelEvaluator:
+        """The quick model, corrected where it was."""
+        return self._quick
 
     def plans(self, stacks: Sequence[Stack]) -> Plans:
         """Those of the stacks that the space can hold, (plans, width), each once, in order."""
@@ -87,7 +93,8 @@ class Judge:
         self.evaluations += 1
         return self._reported.judge(self.space.to_stack(plan, real=True))
 
-    def _correct_by(self, stack: Stack) -> None:
+    def correct_by(self, stack: Stack) -> None:
+        """Reckon from now on with what the reported fidelity says of a stack."""
         plans = self.plans([stack])
         if len(plans):
             quick_n, final = self._quick.forces(plans)[0], self._final(plans[0])

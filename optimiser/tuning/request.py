@@ -58,7 +58,7 @@ class TableRequest(Described):
         default=14, description="most shims in a stack, clamp shims included"
     )
     evaluations: Annotated[int, Field(ge=50, le=200_000)] = Field(
-        default=2000, description="stacks tried in a cell that begins from its neighbour's stacks"
+        default=2500, description="stacks tried in a cell that begins from its neighbour's stacks"
     )
     seed: Annotated[int, Field(ge=0, le=2**31)] = Field(
         default=0, description="same seed, same table"

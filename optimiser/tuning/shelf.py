@@ -6,7 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from optimiser.search.sizes import Floats, Ints
-from optimiser.stack import Shim, Stack
+from optimiser.stack import Stack
 from optimiser.stock import BORE_PLAY_MM, Stock
 
 Size = tuple[float, float, float]
@@ -54,11 +54,6 @@ class Shelf:
                 size = group.shim.outer_mm, group.shim.thickness_mm, self.posts_mm[circuit]
                 table[row, place[size]] += group.quantity
         return table
-
-    def shim(self, number: int) -> Shim:
-        """A size as a shim."""
-        outer, thickness, _ = self.sizes[number]
-        return Shim(outer, thickness)
 
 
 def _alike(posts_mm: Sequence[float]) -> tuple[float, ...]:

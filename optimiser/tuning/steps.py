@@ -1,6 +1,6 @@
 """Which searches a table needs, and from whose stacks each begins."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import replace
 
 from optimiser.stack import Stack
@@ -33,11 +33,12 @@ def search_steps(
 
 
 def settle_steps(
-    cells: Mapping[Place, Cell], found: Mapping[Place, Result]
+    cells: Mapping[Place, Cell], found: Mapping[Place, Result], places: Iterable[Place]
 ) -> dict[Place, Step[Place]]:
-    """A closer look for each cell that has a stack, at what the others found."""
+    """A closer look for each of the places that has a stack, at what all the others found."""
     steps: dict[Place, Step[Place]] = {}
-    for place, cell in cells.items():
+    for place in places:
+        cell = cells[place]
         own = found[place].candidates
         if not own:
             continue
@@ -49,16 +50,12 @@ def settle_steps(
     return steps
 
 
-def again_steps(
-    cells: Mapping[Place, Cell], found: Mapping[Place, Result], tolerance_percent: float
-) -> dict[Place, Step[Place]]:
-    """Another search, from all that is known by now, for each cell that is not good enough."""
+def again_steps(cells: Mapping[Place, Cell], places: Iterable[Place]) -> dict[Place, Step[Place]]:
+    """Another search from nothing with other random numbers: a neighbour's stacks may mislead."""
     steps: dict[Place, Step[Place]] = {}
-    for place, result in found.items():
-        best = result.candidates[:1]
-        if best and not (best[0].sound and best[0].error_percent <= tolerance_percent):
-            order = replace(cells[place].order, start=_begin(result.candidates))
-            steps[place] = Step((), Known(SearchTask(order)))
+    for place in places:
+        order = cells[place].order
+        steps[place] = Step((), Known(SearchTask(replace(order, seed=order.seed + 1))))
     return steps
 
 

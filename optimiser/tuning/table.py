@@ -1,6 +1,6 @@
 """A whole tune table, from what it is asked for to stacks, changes and kits."""
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from concurrent.futures import Executor
 from dataclasses import dataclass, field, replace
 from functools import partial
@@ -119,12 +119,21 @@ class _Work:
         """Search every cell, let each look at what the others found, and repeat the poor ones."""
         masses = len(self.materials.request.rider_masses_kg)
         self.found = self._carry_out("search", search_steps(self.cells, masses))
-        self.found |= self._carry_out("settle", settle_steps(self.cells, self.found))
-        tolerance = self.materials.request.tolerance_percent
-        again = self._carry_out("again", again_steps(self.cells, self.found, tolerance))
-        for place, result in again.items():
+        self._settle(self.cells)
+        poor = self._poor()
+        for place, result in self._carry_out("again", again_steps(self.cells, poor)).items():
             both = kept([*self.found[place].candidates, *result.candidates])
             self.found[place] = replace(self.found[place], candidates=both)
+        self._settle(poor)
+
+    def _settle(self, places: Iterable[Place]) -> None:
+        self.found |= self._carry_out("settle", settle_steps(self.cells, self.found, places))
+
+    def _poor(self) -> list[Place]:
+        """Cells that have a stack but none that is good enough."""
+        limit = self.materials.request.tolerance_percent
+        best = {place: one.candidates[0] for place, one in self.found.items() if one.candidates}
+        return [place for place, one in best.items() if not one.sound or one.error_percent > limit]
 
     def candidates(self) -> dict[Place, tuple[Candidate, ...]]:
         """Those each cell may choose from; cells without any are missing."""

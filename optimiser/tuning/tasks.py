@@ -10,9 +10,10 @@ from typing import Any, Protocol
 import numpy as np
 
 from optimiser.faults import NothingBuildable
-from optimiser.search.find import Order, find
+from optimiser.search.find import Order
 from optimiser.stack import Stack
-from optimiser.tuning.candidate import Candidate, candidate_from, candidate_of
+from optimiser.tuning.candidate import Candidate, candidate_from
+from optimiser.tuning.cell_search import search_cell
 from optimiser.tuning.judge import Judge
 
 #: Changes when records or tasks change, so that no old record is taken for a new one.
@@ -80,16 +81,16 @@ class SearchTask:
         tries = [self.order] if self.order.start else list(_cold(self.order))
         found: list[Candidate] = []
         reasons: list[str] = []
-        evaluations, seconds = 0, 0.0
+        evaluations, began = 0, perf_counter()
         for order in tries:
             try:
-                one = find(order)
+                one, tried = search_cell(order)
             except NothingBuildable as error:
                 reasons.append(str(error))
                 continue
-            found += [candidate_of(proposal) for proposal in one.proposals]
-            evaluations += one.evaluations
-            seconds += one.seconds
+            found += one
+            evaluations += tried
+        seconds = perf_counter() - began
         return Result(kept(found), evaluations, seconds, None if found else reasons[0])
 
 

@@ -4,6 +4,7 @@ from pathlib import Path
 
 import pytest
 
+from optimiser.cli import buying
 from tests.cli.calling import call, lines_wider_than
 
 #: Two points the fitted stack meets but a drawer without its face shims does not.
@@ -22,7 +23,8 @@ SHOP = """outer_mm,inner_mm,thickness_mm,quantity
 
 
 @pytest.fixture
-def options(tmp_path: Path) -> list[str]:
+def options(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> list[str]:
+    monkeypatch.setattr(buying, "EVALUATIONS", 60)
     drawer, shop = tmp_path / "drawer.csv", tmp_path / "shop.csv"
     target = tmp_path / "target.csv"
     drawer.write_text(DRAWER, encoding="utf-8")
@@ -51,7 +53,7 @@ def test_the_missing_face_shim_is_named(options: list[str]) -> None:
 
 
 def test_a_list_that_will_do(options: list[str]) -> None:
-    called = call(*options[:-1], "50")
+    called = call(*options[:-1], "50", "--stock", "workshop", "--circuit", "compression")
     assert called.code == 0
     assert "Nothing to buy" in called.out
 
