@@ -22,6 +22,10 @@ from optimiser.tuning.shelf import Shelf
 from optimiser.tuning.table import TuneTable
 
 WIDTH = 100
+LEGEND = (
+    "kg: rider with kit; N/mm: coil rate. In every cell the error at the clicks out from closed, "
+    "and the stack, face first: number x diameter x thickness, mm."
+)
 #: Columns of stacks beside the riders' mass and spring.
 STACKS_ACROSS = 6
 #: Purchases shown.
@@ -45,6 +49,8 @@ def table_report(
     for feels in _side_by_side(table):
         yield ""
         yield stack_table(table, feels, look)
+    yield ""
+    yield from paragraph(LEGEND, look)
     yield from _poor_cells(table, look)
     yield ""
     yield from _changes(table, look, quiet)
@@ -77,7 +83,7 @@ def _side_by_side(table: TuneTable) -> list[range]:
 def stack_table(table: TuneTable, feels: Sequence[int], look: Look) -> Table:
     """Masses down, feels across, every stack face first under its error and clicks."""
     request = table.materials.request
-    headings = ["rider\nkg", "coil\nN/mm"]
+    headings = ["kg", "N/mm"]
     for feel in feels:
         name = table.materials.feels[feel].name[:14]
         headings += [f"{name}\n{circuit}" for circuit in request.circuits]
@@ -108,7 +114,7 @@ def _cell(table: TuneTable, place: Place) -> Text:
 
 
 def _clicks(table: TuneTable, place: Place, one: Candidate) -> str:
-    return f"{one.clicks} clicks" if table.materials.setups[place.circuit].clicks_range else ""
+    return f"at {one.clicks}" if table.materials.setups[place.circuit].clicks_range else ""
 
 
 def where(table: TuneTable, place: Place) -> str:
