@@ -14,7 +14,7 @@ from .tasks import Count, DieOnce
 
 
 def counts(number: int) -> dict[int, Step[int]]:
-    return {k: Step((), lambda _, k=k: Count(k)) for k in range(number)}  # type: ignore[misc]
+    return {k: Step((), lambda _, k=k: Count(k)) for k in range(number)}
 
 
 def test_one_process_and_two_agree() -> None:
