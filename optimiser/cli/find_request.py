@@ -22,7 +22,7 @@ from optimiser.results import (
     SavedTarget,
     post_mm,
 )
-from optimiser.search.evaluate import middle_clicks
+from optimiser.search.evaluate import ModelEvaluator, middle_clicks
 from optimiser.search.extremes import limits_of
 from optimiser.search.find import Order
 from optimiser.search.obstacles import obstacles
@@ -221,7 +221,8 @@ def _nothing_possible(order: Order) -> str | None:
 
 
 def _far_outside(order: Order) -> str | None:
-    envelope = limits_of(order.setup, _space(order), order.target)
+    quick = ModelEvaluator(order.setup, _space(order), order.target)
+    envelope = limits_of(quick, order.target)
     sentence = feasibility(order.target, envelope).far_outside
     if sentence is None:
         return None

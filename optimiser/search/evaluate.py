@@ -1,5 +1,6 @@
 """Scores of plans by the quick model: many stacks in one damper against one wanted curve."""
 
+from copy import copy
 from dataclasses import dataclass
 from typing import NamedTuple
 
@@ -232,9 +233,14 @@ class ModelEvaluator:
             int(number): self._tables_of(int(number)) for number in np.flatnonzero(space.may_clamp)
         }
 
-    def with_target(self, target: Target) -> "ModelEvaluator":
-        """The same evaluator for another target."""
-        return ModelEvaluator(self.setup, self.space, target, self.click_range)
+    def with_target(
+        self, target: Target, click_range: tuple[int, int] | None = None
+    ) -> "ModelEvaluator":
+        """The same evaluator, with its tables, for another target and, on request, other clicks."""
+        other = copy(self)
+        other.click_range = click_range or self.click_range
+        other._job = make_job(self.setup, target, other.click_range)
+        return other
 
     def evaluate(self, plans: Plans) -> Scores:
         """Scores of (plans, width) rows; independent of each other and of their order."""

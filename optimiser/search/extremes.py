@@ -1,14 +1,14 @@
 """The softest and the firmest stacks of a space: what the stock alone allows."""
 
+from dataclasses import replace
+
 import numpy as np
 
-from optimiser.hydraulics.circuit import limit_forces_n
-from optimiser.prediction import Setup, fixed_tables
+from optimiser.envelope import damper_limits
 from optimiser.search.counts import Counts, Plans
-from optimiser.search.evaluate import ModelEvaluator, make_job
+from optimiser.search.evaluate import ModelEvaluator
 from optimiser.search.operators import sample
 from optimiser.search.repair import Repair
-from optimiser.search.sizes import Floats
 from optimiser.search.space import Space
 from optimiser.wanted.feasible import Limits
 from optimiser.wanted.target import Target
@@ -16,35 +16,21 @@ from optimiser.wanted.target import Target
 _SAMPLED = 400
 
 
-def limits_of(setup: Setup, space: Space, target: Target) -> Limits:
-    """Forces at the target's velocities that bound every stack of the space.
+def limits_of(quick: ModelEvaluator, target: Target) -> Limits:
+    """Forces at the target's velocities that bound every stack of the evaluator's space.
 
     The parts' own limits are exact; the stock's are the extremes of single-shim stacks, of
     stacks as thick as the rules allow, and of a seeded sample (quick model).
     """
-    plans = _extreme_plans(space)
-    softest = _forces(setup, space, target, plans, setup.clicks_range).min(axis=0)
-    firmest = _forces(setup, space, target, plans, 0).max(axis=0)
-    oil, velocity = setup.oil_state, target.velocity_m_s
-    fixed = fixed_tables(setup, float(velocity[-1]))
-    ends = [
-        limit_forces_n(setup.damper, setup.direction, oil, velocity, fixed, clicks)
-        for clicks in (setup.clicks_range, 0)
-    ]
-    seat = setup.valve.seat
-    return Limits.of(
-        ends[0][0],
-        np.minimum(ends[1][1], 1e9),
-        softest,
-        firmest,
-        make_job(setup, target, (0, 0)).fixed,
-        preloaded=seat is not None and seat.height_mm > 0.0,
+    setup, plans = quick.setup, _extreme_plans(quick.space)
+    most = setup.clicks_range
+    limits = damper_limits(setup, target.velocity_m_s)
+    return replace(
+        limits,
+        shut_n=np.minimum(limits.shut_n, 1e9),
+        softest_n=quick.with_target(target, (most, most)).forces(plans).min(axis=0),
+        firmest_n=quick.with_target(target, (0, 0)).forces(plans).max(axis=0),
     )
-
-
-def _forces(setup: Setup, space: Space, target: Target, plans: Plans, clicks: int) -> Floats:
-    """(plans, points) force, N, at one click setting."""
-    return ModelEvaluator(setup, space, target, (clicks, clicks)).forces(plans)
 
 
 def _extreme_plans(space: Space) -> Plans:

@@ -135,7 +135,7 @@ def find(order: Order, progress: ProgressCall | None = None, stop: StopCall | No
         )
         checked.rows(worth_checking(polished, CHECKED, middle))
         archives.append(polished)
-    limits = limits_of(setup, space, target)
+    limits = limits_of(quick, target)
     ranked = rank(checked, order.rank_by, order.rows, middle)
     return Found(
         order,
